@@ -1,0 +1,1 @@
+"""Open photometric file formats."""

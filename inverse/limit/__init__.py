@@ -1,0 +1,1 @@
+"""What no lens can beat."""

@@ -1,0 +1,1 @@
+"""The lens as a shape."""

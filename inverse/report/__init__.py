@@ -1,0 +1,1 @@
+"""Pictures and the page a person reads."""

@@ -1,0 +1,1 @@
+"""A first lens without optimisation."""

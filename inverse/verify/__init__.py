@@ -1,0 +1,1 @@
+"""The second road: an independent Monte Carlo from the exported section."""
