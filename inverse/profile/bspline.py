@@ -1,0 +1,80 @@
+"""Clamped uniform cubic B-spline graphs: heights over an interval, evaluated fast.
+
+A graph f on [a, b] with ``spans`` equal knot spans has spans + 3 coefficients.  With
+u = (x − a)/(b − a) · spans, span s = ⌊u⌋ and local x̂ = u − s,
+
+    f(x) = Σ_j A[s, j] x̂^j ,      A = M c ,
+
+where M is a constant matrix (spans, 4, spans + 3) found once from the basis (de Boor, A
+Practical Guide to Splines, ch. IX–X).  Outside [a, b] the graph continues along its end
+tangent, so that searches that overshoot stay finite.  The same curve, written as control
+points (Greville abscissa, coefficient), is what CAD receives: linear precision makes it exact.
+"""
+
+import functools
+
+import jax.numpy as jnp
+import numpy as np
+from scipy.interpolate import BSpline, PPoly
+
+DEGREE = 3
+
+
+def knots(spans):
+    """Clamped uniform knot vector on [0, 1], shape (spans + 7,)."""
+    return np.concatenate([np.zeros(DEGREE), np.linspace(0.0, 1.0, spans + 1), np.ones(DEGREE)])
+
+
+@functools.cache
+def greville(spans):
+    """Greville abscissae on [0, 1], shape (spans + 3,)."""
+    t = knots(spans)
+    return np.array([t[i + 1 : i + 1 + DEGREE].mean() for i in range(spans + DEGREE)])
+
+
+@functools.cache
+def power_matrix(spans):
+    """M: coefficients to power-basis pieces in span units, shape (spans, 4, spans + 3)."""
+    t, count = knots(spans), spans + DEGREE
+    pieces = []
+    for i in range(count):
+        c = PPoly.from_spline(BSpline(t, np.eye(count)[i], DEGREE)).c[::-1, DEGREE : DEGREE + spans]
+        pieces.append(c / spans ** np.arange(DEGREE + 1)[:, None])  # from [0, 1] to span units
+    return np.transpose(np.array(pieces), (2, 1, 0))
+
+
+def fit(function, spans):
+    """Coefficients (spans + 3,) of the spline that interpolates ``function`` on [0, 1] at Greville points."""
+    g = greville(spans)
+    return np.linalg.solve(BSpline.design_matrix(g, knots(spans), DEGREE).toarray(), function(g))
+
+
+@functools.cache
+def _refiner(spans, finer):
+    g = greville(finer)
+    coarse = BSpline.design_matrix(g, knots(spans), DEGREE).toarray()
+    return np.linalg.solve(BSpline.design_matrix(g, knots(finer), DEGREE).toarray(), coarse)
+
+
+def refine(coefficients, finer):
+    """The same graph on ``finer`` spans; exact when ``finer`` is a multiple of the present spans."""
+    return _refiner(len(coefficients) - DEGREE, finer) @ np.asarray(coefficients)
+
+
+def pieces(coefficients):
+    """Power-basis pieces A (spans, 4) of the coefficients (spans + 3,); linear in them."""
+    return jnp.asarray(power_matrix(coefficients.shape[0] - DEGREE)) @ coefficients
+
+
+def evaluate(A, start, end, x):
+    """Value and slope df/dx of the graph with pieces ``A`` on [start, end] at ``x`` (any shape)."""
+    spans = A.shape[0]
+    scale = spans / (end - start)
+    u = (x - start) * scale
+    inside = jnp.clip(u, 0.0, float(spans))
+    s = jnp.clip(inside.astype(jnp.int32), 0, spans - 1)
+    a0, a1, a2, a3 = (A[:, j][s] for j in range(4))
+    w = inside - s
+    slope = a1 + w * (2.0 * a2 + w * 3.0 * a3)
+    value = a0 + w * (a1 + w * (a2 + w * a3)) + slope * (u - inside)
+    return value, slope * scale
