@@ -1,1 +1,21 @@
-"""What no lens can beat."""
+"""What no lens can beat: étendue, skewness, brightness and the faces' transmission, before any design."""
+
+from inverse.limit.bound import (
+    NEARLY_ALL,
+    Bound,
+    bound,
+    ceiling_at,
+    narrowest_half_angle,
+    refuse_impossible,
+    smallest_radius,
+)
+
+__all__ = [
+    "NEARLY_ALL",
+    "Bound",
+    "bound",
+    "ceiling_at",
+    "narrowest_half_angle",
+    "refuse_impossible",
+    "smallest_radius",
+]
