@@ -41,8 +41,10 @@ class FarField:
             object.__setattr__(self, field, np.asarray(getattr(self, field), float))
         t, i, s = self.theta, self.candela, self.candela_se
         if t.ndim != 1 or len(t) < 2 or i.shape != t.shape or s.shape != t.shape:
-            raise ValueError(f"far field: three equal columns of two or more entries are wanted, "
-                             f"got shapes {t.shape}, {i.shape}, {s.shape}")
+            raise ValueError(
+                f"far field: three equal columns of two or more entries are wanted, "
+                f"got shapes {t.shape}, {i.shape}, {s.shape}"
+            )
         if not (np.all(np.isfinite(t)) and np.all(np.isfinite(i)) and np.all(np.isfinite(s))):
             raise ValueError("far field: an entry is not a finite number")
         if t[0] < 0.0 or t[-1] > math.pi or np.any(np.diff(t) <= 0.0):
@@ -91,7 +93,7 @@ class FarField:
 
 
 def flux_between(start, end, first, last):
-    """Flux in lm between the cones ``start`` and ``end`` (rad), intensity linear from ``first`` to ``last`` (cd)."""
+    """Flux (lm) between the cones ``start`` and ``end`` (rad), intensity linear, ``first`` to ``last``."""
     c, h = 0.5 * (start + end), 0.5 * (end - start)
     mean = 0.5 * (first + last)
     # 2 s = (last − first)/h; the division is moved here, where an empty piece can be guarded

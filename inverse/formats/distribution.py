@@ -44,7 +44,7 @@ class Distribution:
 def once_round(planes, rows, mirrors):
     """Planes (rad) and rows completed by mirror images: ``mirrors`` lists C₀ of each C → 2 C₀ − C.
 
-    A mirrored plane that is there already (to a millionth of a degree, far below any printed digit) is dropped.
+    A mirrored plane that is there already (to 1e-6°, far below any printed digit) is dropped.
     """
     step = math.radians(1e-6)
     whole = {}

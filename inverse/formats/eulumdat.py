@@ -1,4 +1,4 @@
-"""Reading and writing EULUMDAT (.ldt), the open format of European luminaire data (layout in part from memory).
+"""EULUMDAT (.ldt) written and read: the open format of European luminaire data (layout in part from memory).
 
 One value a line, CR LF: 1 maker, 2 type, 3 symmetry, 4 planes Mc, 5 their distance, 6 angles Ng, 7 their
 distance (0 = uneven), 8 report, 9 name, 10 number, 11 file, 12 date, 13–15 length, width, height in mm
@@ -43,7 +43,9 @@ def text(field, plate):
     kept = thin(rad(degrees), candela, TOLERANCE)
     klm = plate.lamp_flux / 1000.0
     if candela.max() / klm > MOST_PER_KLM:
-        raise ValueError(f"{candela.max() / klm:.0f} cd per 1000 lm does not fit a EULUMDAT field of {FIELD} digits")
+        raise ValueError(
+            f"{candela.max() / klm:.0f} cd per 1000 lm does not fit a EULUMDAT field of {FIELD} digits"
+        )
     angles = [_fitted(x, DECIMALS, FIELD) for x in degrees[kept]]
     values = [_fitted(x, FIELD - 2, FIELD) for x in candela[kept] / klm]
     table = printed(angles, np.array(values, float) * klm)
@@ -92,7 +94,7 @@ def text(field, plate):
 
 
 def _fitted(value, decimals, width):
-    """The value with as many decimals as fit ``width`` characters, at most ``decimals``, without idle zeros."""
+    """The value with as many decimals as fit ``width``, at most ``decimals``, without idle zeros."""
     for k in range(decimals, -1, -1):
         word = f"{value:.{k}f}"
         if len(word) <= width:
@@ -178,7 +180,7 @@ def _angles(source, number, count, what, most, at):
 
 
 def _given(source, symmetry, planes):
-    """The planes (deg) that carry intensities, in the file's order, and the mirrors (rad) that complete them."""
+    """The planes (deg) with intensities, in the file's order, and the mirrors (rad) that complete them."""
     count = len(planes)
     if symmetry in (2, 3, 4) and count % {2: 2, 3: 4, 4: 4}[symmetry]:
         raise source.fault(4, f"{count} planes do not divide by what symmetry {symmetry} needs")

@@ -36,7 +36,9 @@ def text(field, plate):
     degrees, candela = printable(field, DECIMALS)
     kept = thin(rad(degrees), candela, TOLERANCE)
     angles = [f"{x:.{DECIMALS}f}".rstrip("0").rstrip(".") for x in degrees[kept]]
-    digits = max(0, DIGITS - 1 - math.floor(math.log10(max(candela.max(), 1e-9))))  # a dark table prints zeros
+    digits = max(
+        0, DIGITS - 1 - math.floor(math.log10(max(candela.max(), 1e-9)))
+    )  # a dark table prints zeros
     values = [f"{x:.{digits}f}" for x in candela[kept]]
     flux = printed(angles, values).flux
     size = f"{-2e-3 * plate.aperture_radius:.5f}"
@@ -49,7 +51,9 @@ def text(field, plate):
         *_keyword("LUMCAT", plate.name),
         *_keyword("LUMINAIRE", f"Total-reflection lens {plate.name}"),
         *_keyword("LAMP", f"{plate.lamp}, {plate.lamp_flux:.6g} lm"),
-        *_keyword("OTHER", f"Flux of this table {flux:.6g} lm, {100 * flux / plate.lamp_flux:.2f} % of the LED's"),
+        *_keyword(
+            "OTHER", f"Flux of this table {flux:.6g} lm, {100 * flux / plate.lamp_flux:.2f} % of the LED's"
+        ),
     ]
     for word, value in plate.stamp.items():
         head += _keyword("OTHER", f"{word} {value}")

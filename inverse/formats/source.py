@@ -21,7 +21,9 @@ class Source:
         """Raises ValueError when the file is too large; OSError when it cannot be read."""
         size = os.path.getsize(path)
         if size > MOST_BYTES:
-            raise ValueError(f"{path}: {size} bytes is too large for a photometric file (at most {MOST_BYTES})")
+            raise ValueError(
+                f"{path}: {size} bytes is too large for a photometric file (at most {MOST_BYTES})"
+            )
         with open(path, "rb") as file:
             return cls(file.read(MOST_BYTES).decode("latin-1"), str(path))
 
@@ -42,5 +44,7 @@ class Source:
         """A whole number between ``least`` and ``most``."""
         value = self.number(word, line, what)
         if value != int(value) or not least <= value <= most:
-            raise self.fault(line, f"{what}: a whole number from {least} to {most} is wanted, got {word[:40]}")
+            raise self.fault(
+                line, f"{what}: a whole number from {least} to {most} is wanted, got {word[:40]}"
+            )
         return int(value)

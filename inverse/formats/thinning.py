@@ -39,7 +39,7 @@ def thin(theta, candela, tolerance, flux_tolerance=FLUX_TOLERANCE):
 
 def _reach(theta, candela, inside, start, allowed, flux_each):
     """The farthest row to which one straight piece from ``start`` obeys both rules."""
-    best, misses = start + 1, 0
+    best = start + 1
     for end in range(start + 2, len(theta)):
         rows = slice(start, end + 1)
         chord = np.interp(theta[rows], theta[[start, end]], candela[[start, end]])

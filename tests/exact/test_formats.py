@@ -99,7 +99,13 @@ def test_long_words_are_continued():
 
 @pytest.mark.parametrize(
     "given, spelt",
-    [("Öl & Fön", "Oel & Foen"), ("café 5°", "cafe 5 deg"), ("1×1 µm", "1x1 um"), ("光", "?"), ("a\nb\x00", "a b?")],
+    [
+        ("Öl & Fön", "Oel & Foen"),
+        ("café 5°", "cafe 5 deg"),
+        ("1×1 µm", "1x1 um"),
+        ("光", "?"),
+        ("a\nb\x00", "a b?"),
+    ],
 )
 def test_transliteration(given, spelt):
     """Umlauts, accents and signs become plain letters, the unknown a question mark, line breaks blanks."""
@@ -115,10 +121,12 @@ def test_equal_input_gives_equal_bytes(format):
 
 
 def test_lm63_head_follows_the_layout():
-    """Type C, absolute, metres, one plane, a round opening written as minus its diameter (LM-63-2002, from memory)."""
+    """Type C, absolute, metres, one plane, a round opening of −diameter (LM-63-2002, from memory)."""
     lines = lm63.text(beam("cut"), plate(400.0)).split("\r\n")
     assert lines[0] == "IESNA:LM-63-2002"
-    assert {"[TEST]", "[TESTLAB]", "[ISSUEDATE]", "[MANUFAC]"} <= {line.split()[0] for line in lines[1:] if line}
+    assert {"[TEST]", "[TESTLAB]", "[ISSUEDATE]", "[MANUFAC]"} <= {
+        line.split()[0] for line in lines[1:] if line
+    }
     numbers = lines[lines.index("TILT=NONE") + 1].split()
     assert numbers[:3] == ["1", "-1", "1"] and numbers[4:7] == ["1", "1", "2"]
     assert [float(x) for x in numbers[7:]] == [-0.025, -0.025, 0.0]
@@ -200,14 +208,38 @@ def test_lm63_symmetries(planes, rows, full):
 
 
 def test_lm63_older_issue_with_tilt_table():
-    """An issue of 1991 with TILT=INCLUDE: the tilt table is passed over, the ballast-lamp factor multiplies."""
-    old = "IESNA91\n[TEST] x\nTILT=INCLUDE\n1\n2\n0 90\n1 0.9\n1 -1 1 2 1 1 1 0 0 0\n1.0 0.5 10\n0 90\n0\n8 4\n"
+    """An issue of 1991 with TILT=INCLUDE: its table is passed over, the ballast-lamp factor multiplies."""
+    old = (
+        "IESNA91\n[TEST] x\nTILT=INCLUDE\n1\n2\n0 90\n1 0.9\n1 -1 1 2 1 1 1 0 0 0\n1.0 0.5 10\n0 90\n0\n8 4\n"
+    )
     assert lm63.parse(old).candela.tolist() == [[4.0, 2.0]]
 
 
 def ldt(symmetry, planes, rows):
     """A EULUMDAT text written by hand: 3 angles, 2000 lm, conversion factor 0.5 → cd = given value."""
-    lines = ["Nobody", "1", symmetry, len(planes), 0, 3, 0, "r", "n", "1", "f", "d", 90, 0, 5, 80, 0, 0, 0, 0, 0]
+    lines = [
+        "Nobody",
+        "1",
+        symmetry,
+        len(planes),
+        0,
+        3,
+        0,
+        "r",
+        "n",
+        "1",
+        "f",
+        "d",
+        90,
+        0,
+        5,
+        80,
+        0,
+        0,
+        0,
+        0,
+        0,
+    ]
     lines += [100, 80, 0.5, 0, 1, 1, "LED", 2000, "4000 K", "1B", 20, *[0.5] * 10, *planes, 0, 45, 90]
     return "\r\n".join(map(str, lines + [x for row in rows for x in row])) + "\r\n"
 
@@ -257,9 +289,14 @@ GOOD_LDT = ldt(1, [0], [[10, 6, 2]])
         ("0.5 3 1 1 2", "0.5 3 900000000 1 2", 6, "whole number from 1"),
         ("0.5 3 1 1 2", "-0.5 3 1 1 2", 6, "multiplier"),
         ("0.5 3 1 1 2", "1_0 3 1 1 2", 6, "'1_0'"),
-        ("3 1 1 2 0.1 0.1 0\n0.9 1 12\n0 45 90\n0\n", "3 2 1 2 0 0 0\n1 1 1\n0 45 90\n0 60\n1 1 1\n", 9, "symmetry"),
+        (
+            "3 1 1 2 0.1 0.1 0\n0.9 1 12\n0 45 90\n0\n",
+            "3 2 1 2 0 0 0\n1 1 1\n0 45 90\n0 60\n1 1 1\n",
+            9,
+            "symmetry",
+        ),
     ],
-)  # fmt: skip
+)
 def test_lm63_faults_name_their_line(old, new, line, words):
     """A malformed file gives one ValueError with file name, line and what was wanted."""
     assert old in GOOD_IES
@@ -269,10 +306,21 @@ def test_lm63_faults_name_their_line(old, new, line, words):
 
 @pytest.mark.parametrize(
     "at, new, words",
-    [(3, "9", "symmetry"), (3, "1,5", "decimal point"), (4, "0", "planes"), (6, "1", "angles Ng"), (24, "0", "factor"),
-     (29, "-5", "flux of the lamps"), (44, "-3", "between"), (45, "0", "must increase"), (48, "x", "'x'"),
-     (47, "-1", "negative"), (49, None, "ends where"), (50, "7", "after the last")],
-)  # fmt: skip
+    [
+        (3, "9", "symmetry"),
+        (3, "1,5", "decimal point"),
+        (4, "0", "planes"),
+        (6, "1", "angles Ng"),
+        (24, "0", "factor"),
+        (29, "-5", "flux of the lamps"),
+        (44, "-3", "between"),
+        (45, "0", "must increase"),
+        (48, "x", "'x'"),
+        (47, "-1", "negative"),
+        (49, None, "ends where"),
+        (50, "7", "after the last"),
+    ],
+)
 def test_eulumdat_faults_name_their_line(at, new, words):
     """A malformed file gives one ValueError with file name, line and what was wanted."""
     lines = GOOD_LDT.split("\r\n")
@@ -299,7 +347,9 @@ def test_damaged_files_fail_in_words(format, seed):
     for _ in range(rng.integers(1, 4)):
         a, b = sorted(rng.integers(0, len(content), 2))
         b = min(b, a + int(rng.integers(0, 12)))
-        content = content[:a] + "".join(rng.choice(list(" 0159-.eE\n[]=é\x00"), rng.integers(0, 4))) + content[b:]
+        content = (
+            content[:a] + "".join(rng.choice(list(" 0159-.eE\n[]=é\x00"), rng.integers(0, 4))) + content[b:]
+        )
     try:
         got = format.parse(content)
     except ValueError:

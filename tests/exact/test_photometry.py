@@ -19,14 +19,22 @@ def field(theta, candela, se=None):
 def test_uniform_cone_flux():
     """A uniform cone of half-angle a holds Φ = 2π I (1 − cos a) (closed form), however coarse the table."""
     a = 7.0 * DEG
-    assert field([0.0, 0.02, a], [300.0] * 3).flux == pytest.approx(2 * math.pi * 300 * (1 - math.cos(a)), rel=1e-14)
+    assert field([0.0, 0.02, a], [300.0] * 3).flux == pytest.approx(
+        2 * math.pi * 300 * (1 - math.cos(a)), rel=1e-14
+    )
 
 
 def test_linear_table_flux_is_exact():
-    """The table's flux is the integral of its piecewise linear intensity; source: scipy's adaptive quadrature."""
+    """The table's flux integrates its linear pieces; source: scipy's adaptive quadrature."""
     theta, candela = np.array([0.0, 0.3, 0.35, 1.9, math.pi]), np.array([5.0, 90.0, 2.0, 7.0, 1.0])
     wanted = sum(
-        quad(lambda t: 2 * math.pi * np.interp(t, theta, candela) * math.sin(t), a, b, epsabs=1e-12, epsrel=1e-13)[0]
+        quad(
+            lambda t: 2 * math.pi * np.interp(t, theta, candela) * math.sin(t),
+            a,
+            b,
+            epsabs=1e-12,
+            epsrel=1e-13,
+        )[0]
         for a, b in zip(theta, theta[1:])
     )
     assert field(theta, candela).flux == pytest.approx(wanted, rel=1e-12)
@@ -35,7 +43,9 @@ def test_linear_table_flux_is_exact():
 def test_tiny_steps_lose_no_digits():
     """Ten million times finer steps near the axis still add up: Φ = π I θ² for small θ (closed form)."""
     theta = np.linspace(0.0, 1e-5, 1001)
-    assert field(theta, np.full(1001, 2.0)).flux == pytest.approx(2 * math.pi * 1e-10, rel=1e-9)  # θ²/12 = 1e-11
+    assert field(theta, np.full(1001, 2.0)).flux == pytest.approx(
+        2 * math.pi * 1e-10, rel=1e-9
+    )  # θ²/12 = 1e-11
 
 
 def test_lambertian_flux_and_encircled():
@@ -52,13 +62,21 @@ def test_lambertian_flux_and_encircled():
 
 def test_first_angle_off_the_axis():
     """Below the first angle the first intensity holds: a table from 0.1 rad counts the cap inside it."""
-    assert field([0.1, 0.2], [50.0, 50.0]).flux == pytest.approx(2 * math.pi * 50 * (1 - math.cos(0.2)), rel=1e-14)
+    assert field([0.1, 0.2], [50.0, 50.0]).flux == pytest.approx(
+        2 * math.pi * 50 * (1 - math.cos(0.2)), rel=1e-14
+    )
 
 
 def test_flux_error_adds_independent_entries():
     """The flux is linear in the entries; its error is the root sum of squares of each entry's own effect."""
-    theta, candela, se = np.array([0.05, 0.2, 0.5, 0.9]), np.array([9.0, 6.0, 2.0, 0.5]), np.array([0.3, 0.2, 0.1, 0.05])
-    effects = [field(theta, candela + se * (np.arange(4) == k)).flux - field(theta, candela).flux for k in range(4)]
+    theta, candela, se = (
+        np.array([0.05, 0.2, 0.5, 0.9]),
+        np.array([9.0, 6.0, 2.0, 0.5]),
+        np.array([0.3, 0.2, 0.1, 0.05]),
+    )
+    effects = [
+        field(theta, candela + se * (np.arange(4) == k)).flux - field(theta, candela).flux for k in range(4)
+    ]
     assert field(theta, candela, se).flux_se == pytest.approx(np.linalg.norm(effects), rel=1e-10)
 
 
@@ -123,7 +141,10 @@ def test_ring_contrast_of_a_known_pair():
 
 def test_smooth_beam_has_no_rings():
     """A beam that only darkens outwards has contrast 0, whatever stray light lies beyond its field angle."""
-    assert photometry.ring_contrast(field([0.0, 0.1, 0.2, 0.3, 0.4], [100.0, 60.0, 1.0, 2.0, 0.0])) == (0.0, 0.0)
+    assert photometry.ring_contrast(field([0.0, 0.1, 0.2, 0.3, 0.4], [100.0, 60.0, 1.0, 2.0, 0.0])) == (
+        0.0,
+        0.0,
+    )
 
 
 def test_figures_speak_in_their_units():
@@ -141,10 +162,16 @@ def test_figures_speak_in_their_units():
 
 @pytest.mark.parametrize(
     "theta, candela",
-    [([0.0, 0.0], [1.0, 1.0]), ([0.0, 4.0], [1.0, 1.0]), ([0.0, 1.0], [1.0, -1.0]), ([0.0, 1.0], [1.0, math.nan]),
-     ([0.0], [1.0]), ([0.0, 1.0], [1.0, 1.0, 1.0])],
-)  # fmt: skip
+    [
+        ([0.0, 0.0], [1.0, 1.0]),
+        ([0.0, 4.0], [1.0, 1.0]),
+        ([0.0, 1.0], [1.0, -1.0]),
+        ([0.0, 1.0], [1.0, math.nan]),
+        ([0.0], [1.0]),
+        ([0.0, 1.0], [1.0, 1.0, 1.0]),
+    ],
+)
 def test_bad_tables_are_refused(theta, candela):
-    """Angles that stand still or pass 180°, negative or undefined intensities, unequal columns: no far field."""
+    """Standing angles, angles past 180°, negative or undefined intensities, unequal columns: refused."""
     with pytest.raises(ValueError, match="far field"):
         field(theta, candela)
