@@ -34,20 +34,20 @@ class CosinePower:
         return (1.0 - u) ** (1.0 / (self.power + 1.0))
 
 
-@dataclass(frozen=True)
+@dataclass(frozen=True, eq=False)  # an array has no single answer to ==, so a table equals itself only
 class Table:
     """I(θ) from a table, linear in between, zero beyond the last angle and beyond 90°."""
 
     angles: np.ndarray  # (k,) rad, increasing from 0
     values: np.ndarray  # (k,) relative, >= 0
 
-    def intensity(self, theta):
-        inside = np.asarray(theta) <= np.pi / 2
-        return np.where(inside, np.interp(theta, self.angles, self.values, right=0.0), 0.0)
-
     def __post_init__(self):
         for name in ("angles", "values"):
             object.__setattr__(self, name, np.asarray(getattr(self, name), float))
+
+    def intensity(self, theta):
+        inside = np.asarray(theta) <= np.pi / 2
+        return np.where(inside, np.interp(theta, self.angles, self.values, right=0.0), 0.0)
 
     @cached_property
     def _grid(self):

@@ -12,14 +12,14 @@ share · c(θ) ≤ the largest share inside θ.
 
 Both hold for any lens that is a body of revolution and shines from a clear aperture of the given radius
 (conditions in `inverse.limit.etendue`).  Losses come on top: ``ceiling_with_losses`` counts uncoated faces
-passed straight on; light returning after two reflections can add up to 0.2 % of it to a real lens.
+passed straight on; light returning after two reflections can add a few parts in a thousand to a real lens.
 
 Where a question asks for "nearly all" the light, `NEARLY_ALL` of what the faces let through is meant:
 the last per cent of a square die's light takes far more room than its étendue.
 """
 
 import math
-from dataclasses import dataclass, replace
+from dataclasses import dataclass
 
 import numpy as np
 
@@ -53,16 +53,19 @@ def _capacity(source, radius, height, target, surroundings, half_angle):
     if target.distance is None:
         cone = float(etendue.reach_of_cone(half_angle, surroundings))
         return skewness.disk_density(source.skewness, radius, cone)
-    spot = target.distance * math.tan(min(half_angle, 0.4999 * math.pi))  # short of an infinite plane
     path = etendue.layers(target, surroundings, height)
-    return skewness.pair_density(source.skewness, radius, spot, path)
+    return skewness.pair_density(source.skewness, radius, _spot(target, half_angle), path)
+
+
+def _spot(target, half_angle):
+    return target.distance * math.tan(min(half_angle, 1.57))  # mm; 90° would be an infinite plane
 
 
 def _target_etendue(radius, height, target, surroundings):
     if target.distance is None:
         return float(etendue.of_aperture(radius, etendue.reach_of_cone(target.half_angle, surroundings)))
-    spot = target.distance * math.tan(target.half_angle)
-    return etendue.of_pair(radius, spot, etendue.layers(target, surroundings, height))
+    path = etendue.layers(target, surroundings, height)
+    return etendue.of_pair(radius, _spot(target, target.half_angle), path)
 
 
 def _ceilings(source, radius, height, target, surroundings):
@@ -151,7 +154,7 @@ def _wanted(share, index, surroundings):
 
 
 def _least(reaches, low, high):
-    """The least value in [low, high] for which ``reaches`` holds, halving the logarithm; None if none does."""
+    """The least value in [low, high] for which ``reaches`` holds, to `HALVINGS`; None if none does."""
     if not reaches(high):
         return None
     low, high = math.log(low), math.log(high)
@@ -229,6 +232,7 @@ def refuse_impossible(emitter, radius, height, target, surroundings, index):
         pass  # the share alone is out of reach, whatever the size: the first advice stands
     raise BeyondLimit(
         f"a share of {target.share:.4g} within {deg(target.half_angle):.4g} deg is impossible: "
-        f"the largest is {found.ceiling:.4g} before losses and {found.ceiling_with_losses:.4g} through uncoated faces. "
+        f"the largest is {found.ceiling:.4g} before losses, "
+        f"{found.ceiling_with_losses:.4g} through uncoated faces. "
         + ", ".join(advice) + "."
     )

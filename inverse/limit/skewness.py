@@ -62,7 +62,7 @@ def chord(emitter, offset):
 
 
 def disk_density(skewness, radius, cone):
-    """dE/ds (mm sr) of an aperture of ``radius`` mm and a cone |p| <= ``cone``, shape of ``skewness`` (mm)."""
+    """dE/ds (mm sr) of an aperture of ``radius`` mm and a cone |p| <= ``cone`` at ``skewness`` (mm)."""
     most = radius * cone
     ratio = np.minimum(np.abs(skewness) / most, 1.0) if most > 0 else np.ones_like(skewness)
     return 4 * np.pi * most * (np.sqrt(1 - ratio**2) - ratio * np.arccos(ratio))

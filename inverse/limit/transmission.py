@@ -36,7 +36,7 @@ def unpolarised(index_in, index_out, sine):
 def critical_angle(index, outside=1.0):
     """Incidence (rad) in ``index`` beyond which light is totally reflected; ValueError if it never is."""
     if outside >= index:
-        raise ValueError(f"total reflection needs the denser medium inside, got index {index} towards {outside}")
+        raise ValueError(f"total reflection needs the denser medium inside; got {index} towards {outside}")
     return float(np.arcsin(outside / index))
 
 
