@@ -1,0 +1,201 @@
+"""Where a ray first crosses the revolved body: no leak at a joint, no root lost at grazing.
+
+A ray p(t) = o + t d, |d| = 1, has the radius ρ(t)² = A t² + 2 B t + C with A = d_x² + d_y²,
+B = o_x d_x + o_y d_y, C = o_x² + o_y².  It meets the ring (r, z) of the body where
+
+    G(r, z) = d_z² r² − [d_z² C + 2 d_z (z − o_z) B + (z − o_z)² A]
+
+vanishes (t eliminated by z = o_z + t d_z).  G is linear in the four numbers d_z², −A,
+2 (A o_z − d_z B) and −d_z² C + 2 d_z o_z B − o_z² A, so one matrix product evaluates it at all
+nodes of the chain for all rays, and a second one its slope D along the chain.
+
+* A change of sign between two nodes brackets one root.  Neighbouring curves share the sign at
+  their joint, so nothing slips through; on the axis G <= 0 always, so every line crosses the
+  closed chain an even number of times.
+* Equal signs with slopes that lead towards zero from both ends may hide a pair of roots
+  (grazing, or a near-horizontal ray, whose two crossings of one ring nearly coincide in z).
+
+Every candidate is then refined by Newton in (t, u) on the exact pieces,
+
+    z(u) − o_z − t d_z = 0 ,   r(u) − ρ(t) = 0 ,   determinant  d_z r' − z' ρ'  ∝  −d · (outward normal),
+
+well conditioned for horizontal rays and near the axis.  The sign of the determinant says whether
+the crossing leaves or enters the body.  A ray that is known to be inside can only leave, one
+outside can only enter: this rejects the point it starts from without a guessed offset.
+"""
+
+from dataclasses import dataclass
+
+import numpy as np
+
+BLOCK = 2048  # rays a matrix product: about 4 MB a table, so that it stays in the cache
+SHALLOW = 0.05  # |d_z| below which the two crossings of a ring are told apart by ρ, not by z
+# Newton has converged when the point is on the ray to this fraction of the body's size (rounding: 1e-15).
+RESIDUAL = 1e-12
+# A crossing this little behind the start, in body sizes, still counts: the start itself is rounded.
+BEHIND = 1e-11
+NEAR_ZERO = 0.05  # part of |G| at the nodes within which an estimated extremum may still reach zero
+ROUNDING = 1e-13  # of G, relative to its largest term
+
+
+@dataclass(frozen=True)
+class Crossing:
+    """First crossing of each ray; ``curve`` is -1 and ``t`` infinite where there is none."""
+
+    t: np.ndarray  # (k,) mm
+    u: np.ndarray  # (k,) pieces
+    curve: np.ndarray  # (k,) number of the curve
+
+
+def first_crossing(chain, origin, direction, inside):
+    """The first crossing of each ray with the body.
+
+    ``origin`` (k, 3) mm, ``direction`` (k, 3) unit, ``inside`` (k,) bool: in the material or in air.
+    """
+    count = len(origin)
+    t, u, curve = np.full(count, np.inf), np.zeros(count), np.full(count, -1)
+    for a in range(0, count, BLOCK):
+        part = slice(a, min(a + BLOCK, count))
+        _search(chain, origin[part], direction[part], inside[part], t[part], u[part], curve[part])
+    return Crossing(t, u, curve)
+
+
+def _search(chain, origin, direction, inside, best_t, best_u, best_curve):
+    ray = _Rays(origin, direction, inside)
+    value, slope = _tables(chain, ray)
+    ray_at, node, s, t, single = _candidates(chain, ray, value, slope)
+    if not len(ray_at):
+        return
+    curve = chain.curve[node]
+    t, u, facing, solved = _newton(chain, ray, ray_at, curve, t, chain.u[node] + s * chain.span[node])
+    slack = 1e-6 * chain.span[node]  # in u; joints and nodes belong to both sides
+    astray = single & ~(solved & (np.abs(u - chain.u[node] - 0.5 * chain.span[node])
+                                  <= 0.5 * chain.span[node] + slack))
+    astray &= np.abs(ray.dz[ray_at]) >= SHALLOW
+    if astray.any():
+        k = np.flatnonzero(astray)
+        t[k], u[k], facing[k], solved[k] = _bisect(chain, ray, ray_at[k], node[k])
+    good = solved & (facing * ray.sense[ray_at] > 0.0) & (t > -BEHIND * chain.size)
+    ray_at, t, u, curve = ray_at[good], t[good], u[good], curve[good]
+    order = np.lexsort((t, ray_at))
+    lead = order[np.append(True, np.diff(ray_at[order]) > 0)] if len(order) else order
+    best_t[ray_at[lead]], best_u[ray_at[lead]], best_curve[ray_at[lead]] = t[lead], u[lead], curve[lead]
+
+
+class _Rays:
+    """The numbers of each ray that the search needs, shape (k,)."""
+
+    def __init__(self, origin, direction, inside):
+        (ox, oy, self.oz), (dx, dy, self.dz) = origin.T, direction.T
+        self.A, self.B, self.C = dx * dx + dy * dy, ox * dx + oy * dy, ox * ox + oy * oy
+        self.sense = np.where(inside, -1.0, 1.0)  # sign of the determinant at an allowed crossing
+
+
+def _tables(chain, ray):
+    """G and its slope along the chain, (nodes, k), mm² and mm."""
+    steep, mixed = ray.dz**2, 2.0 * (ray.A * ray.oz - ray.dz * ray.B)
+    constant = 2.0 * ray.dz * ray.oz * ray.B - steep * ray.C - ray.oz**2 * ray.A
+    weights = np.stack([steep, ray.A, mixed, constant])
+    r, z = chain.r, chain.z
+    value = np.column_stack([r * r, -z * z, z, np.ones_like(r)]) @ weights
+    value[chain.twin] = value[chain.twin - 1]  # one sign a joint, whatever the rounding
+    floor = -ROUNDING * chain.size**2
+    np.minimum(value[0], floor, out=value[0])
+    np.minimum(value[-1], floor, out=value[-1])
+    slope = np.column_stack([2.0 * r * chain.dr, -2.0 * z * chain.dz, chain.dz]) @ weights[:3]
+    return value, slope
+
+
+def _candidates(chain, ray, value, slope):
+    """Starting points (ray, node, s, t) for Newton, and whether each is a bracketed single root."""
+    low, down = value < 0.0, slope < 0.0
+    change = low[1:] ^ low[:-1]
+    dip = (down[:-1] ^ low[:-1]) & ~(down[1:] ^ low[1:]) & ~change & chain.band[:, None]
+    # Single roots: regula falsi with the slope at the start, i.e. the parabola through both values.
+    node, at = np.nonzero(change)
+    g0, g1, d0 = value[node, at], value[node + 1, at], slope[node, at] * chain.length[node]
+    curvature = g1 - g0 - d0
+    root = np.sqrt(np.maximum(d0 * d0 - 4.0 * curvature * g0, 0.0))
+    with np.errstate(divide="ignore", invalid="ignore"):
+        s = -2.0 * g0 / (d0 + np.where(g0 < g1, root, -root))
+    s = np.where((s >= 0.0) & (s <= 1.0), s, g0 / (g0 - g1))
+    # Pairs: the slope taken linear in between, its zero refined once on the curve itself.
+    pair, pair_at = np.nonzero(dip)
+    g0, g1 = value[pair, pair_at], value[pair + 1, pair_at]
+    d0, d1 = slope[pair, pair_at] * chain.length[pair], slope[pair + 1, pair_at] * chain.length[pair]
+    middle, margin = d0 / (d0 - d1), NEAR_ZERO * np.maximum(np.abs(g0), np.abs(g1)) + ROUNDING * chain.size**2
+    keep = np.sign(g0) * (g0 + 0.5 * d0 * middle) < margin
+    pair, pair_at, middle, bend = pair[keep], pair_at[keep], middle[keep], (d1 - d0)[keep]
+    for _ in range(2):
+        peak, tilt = _along(chain, ray, pair, pair_at, middle)
+        middle = np.clip(middle - tilt / bend, 0.0, 1.0)
+    peak = peak - 0.5 * tilt * tilt / bend
+    half = np.sqrt(np.maximum(-2.0 * peak / bend, 0.0)) + 1e-3  # never both from the same point
+    node, at = np.concatenate([node, pair, pair]), np.concatenate([at, pair_at, pair_at])
+    single = np.arange(len(node)) < len(s)
+    s = np.concatenate([s, np.clip(middle - half, 0.0, 1.0), np.clip(middle + half, 0.0, 1.0)])
+    return _with_time(chain, ray, at, node, s, single)
+
+
+def _along(chain, ray, node, at, s):
+    """G and dG/ds at the part ``s`` of the band that starts at ``node``, by the formula of the docstring."""
+    r, z, r1, z1 = chain.at(chain.u[node] + s * chain.span[node], chain.curve[node])
+    dz, A, B, up = ray.dz[at], ray.A[at], ray.B[at], z - ray.oz[at]
+    value = dz * dz * (r * r - ray.C[at]) - up * (2.0 * dz * B + up * A)
+    return value, 2.0 * chain.span[node] * (dz * dz * r * r1 - (dz * B + up * A) * z1)
+
+
+def _with_time(chain, ray, at, node, s, single):
+    """The starting ``t`` of each candidate; those plainly behind or facing the wrong way are dropped."""
+    r, z, r1, z1 = chain.at(chain.u[node] + s * chain.span[node], chain.curve[node])
+    dz, A, B = ray.dz[at], ray.A[at], ray.B[at]
+    shallow = np.abs(dz) < SHALLOW
+    t = (z - ray.oz[at]) / np.where(shallow, 1.0, dz)
+    facing = (dz * r1 - z1 * (A * t + B) / np.maximum(r, 1e-9 * chain.size)) / np.hypot(r1, z1)
+    # The estimate is off by up to one band in z, and by the turn of a band in direction.
+    keep = (t * dz * np.sign(dz) > -2.0 * chain.length[node]) & (facing * ray.sense[at] > -0.2) & ~shallow
+    k = np.flatnonzero(shallow)
+    A, B, C, r = A[k], B[k], ray.C[at[k]], r[k]
+    spread = np.sqrt(np.maximum(B * B - A * (C - r * r), 1e-6 * r * r))  # two starts, also where ρ > r
+    t = np.concatenate([t[keep], (-B - spread) / A, (-B + spread) / A])
+    at, node, s, single = (np.concatenate([x[keep], x[k], x[k]]) for x in (at, node, s, single))
+    return at, node, s, t, single
+
+
+def _newton(chain, ray, at, curve, t, u, steps=4, more=12):
+    """(t, u, determinant, solved) from starting values; ``solved`` by the residual, never assumed."""
+    t, u = t.copy(), u.copy()
+    facing, off = np.zeros_like(t), np.full_like(t, np.inf)
+    todo = np.arange(len(t))
+    for step in range(steps + more):
+        if step >= steps:
+            todo = todo[off[todo] > RESIDUAL * chain.size]
+        if not len(todo):
+            break
+        i, c, tt, uu = at[todo], curve[todo], t[todo], u[todo]
+        dz, A, B = ray.dz[i], ray.A[i], ray.B[i]
+        r, z, r1, z1 = chain.at(uu, c)
+        half = A * tt + B
+        rho = np.sqrt(np.maximum((half + B) * tt + ray.C[i], 0.0))
+        rho1 = half / np.maximum(rho, np.finfo(float).tiny)
+        f1, f2 = z - ray.oz[i] - tt * dz, r - rho
+        det = dz * r1 - z1 * rho1
+        off[todo], facing[todo] = np.abs(f1) + np.abs(f2), det
+        safe = np.where(det == 0.0, np.inf, det)  # exactly grazing: no step, the pair stays unsolved
+        limit = 0.5 + 0.02 * (chain.last[c] - chain.first[c])
+        du = np.clip((rho1 * f1 - dz * f2) / safe, -limit, limit)
+        u[todo] = np.clip(uu + du, chain.first[c], chain.last[c])
+        t[todo] = tt + (r1 * f1 - z1 * f2) / safe
+    return t, u, facing, off <= RESIDUAL * chain.size
+
+
+def _bisect(chain, ray, at, node):
+    """As ``_newton``, for roots bracketed by a change of sign that Newton did not find in its band."""
+    low, high, width = np.zeros(len(at)), np.ones(len(at)), chain.span[node]
+    start = (_along(chain, ray, node, at, low)[0] < 0.0) | (chain.r[node] == 0.0)
+    for _ in range(50):  # bands are at most a few dozen pieces: down to 1e-13 of a piece
+        s = 0.5 * (low + high)
+        here = (_along(chain, ray, node, at, s)[0] < 0.0) == start
+        low, high = np.where(here, s, low), np.where(here, high, s)
+    u, curve = chain.u[node] + s * width, chain.curve[node]
+    return _newton(chain, ray, at, curve, (chain.at(u, curve)[1] - ray.oz[at]) / ray.dz[at], u)
