@@ -94,7 +94,7 @@ def pocket(led, lens, mould, complaints):
     if need >= lens.height_max_mm:
         problem = (
             f"got {lens.height_max_mm:g} mm, but foot {lens.foot_mm:g} mm, dome {above:g} mm, clearance "
-            f"{lens.clearance_mm:g} mm and wall {mould.wall_mm:g} mm take it up; wanted more than {need:.5g} mm"
+            f"{lens.clearance_mm:g} mm, wall {mould.wall_mm:g} mm take it up; wanted more than {need:.5g} mm"
         )
         complaints.add(("lens", "height_max_mm"), problem)
     if mould.corner_radius_mm >= clear:

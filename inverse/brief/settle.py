@@ -20,7 +20,8 @@ def emitter(section, folder, complaints):
     law = section.law or (LAW_KEYS[given[0]] if given else "lambertian")
     change = {"law": law, "law_table_file": None}
     if section.die is None:
-        change |= {"rows": section.rows or 1, "columns": section.columns or 1, "gap_mm": section.gap_mm or 0.0}
+        change |= {"rows": section.rows or 1, "columns": section.columns or 1}
+        change["gap_mm"] = section.gap_mm or 0.0
     change["law_table"] = table.settled(
         "emitter", "law_table", section, folder, complaints, least_width=LEAST_LAW, sampled=90.0
     )

@@ -40,7 +40,9 @@ height_mm = 0.25
 x_mm = 0.4
 """).replace("[emitter]\n", "[emitter]\nlaw_table = [[0, 2], [60, 1], [90, 0]]\n")
 WATER = LEAST + '[surroundings]\nmedium = "water"\nport = { index = 1.52, thickness_mm = 3, gap_mm = 0.5 }\n'
-BEAM = LEAST.replace("half_angle_deg = 6.0", "beam_angle_deg = 12\nfield_angle_deg = 30\nshare = 0.5\ndistance_mm = 900")
+BEAM = LEAST.replace(
+    "half_angle_deg = 6.0", "beam_angle_deg = 12\nfield_angle_deg = 30\nshare = 0.5\ndistance_mm = 900"
+)
 TABLE = LEAST.replace("half_angle_deg = 6.0", "table = [[0, 5], [10, 10], [20, 0], [30, 0]]")
 SPOT = LEAST.replace("half_angle_deg = 6.0", "spot_diameter_mm = 500\ndistance_mm = 2000")
 VARIANTS = {"least": LEAST, "dice": DICE, "water": WATER, "beam": BEAM, "table": TABLE, "spot": SPOT}
@@ -49,7 +51,8 @@ VARIANTS = {"least": LEAST, "dice": DICE, "water": WATER, "beam": BEAM, "table":
 def same(a, b):
     """Deep equality of nested dataclasses with arrays."""
     if dataclasses.is_dataclass(a):
-        return type(a) is type(b) and all(same(getattr(a, f.name), getattr(b, f.name)) for f in dataclasses.fields(a))
+        names = [f.name for f in dataclasses.fields(a)]
+        return type(a) is type(b) and all(same(getattr(a, name), getattr(b, name)) for name in names)
     if isinstance(a, tuple):
         return type(b) is tuple and len(a) == len(b) and all(map(same, a, b))
     if isinstance(a, np.ndarray):
@@ -68,7 +71,7 @@ def test_the_resolved_brief_reads_back_to_the_same_brief(text):
 
 @pytest.mark.parametrize("path", SHIPPED, ids=[p.stem for p in SHIPPED])
 def test_shipped_briefs_are_good_and_read_back(path, tmp_path):
-    """Each brief of configs/ reads without fault, and its resolved text stands alone, away from its tables."""
+    """Each brief of configs/ reads without fault; its resolved text stands alone, away from tables."""
     first = read(path)
     (tmp_path / "brief.toml").write_text(first.resolved)
     assert same(first, read(tmp_path / "brief.toml"))
@@ -96,13 +99,13 @@ def test_the_digest_is_the_hash_of_the_resolved_text():
     ('name = "least"', '\ufeffname = "least"'),
 ])
 def test_the_digest_ignores_how_a_brief_is_written(old, new, tmp_path):
-    """Remarks, whole numbers, other units, defaults spelt out, line ends and byte order marks change nothing."""
+    """Remarks, whole numbers, other units, defaults spelt out, line ends and BOM change nothing."""
     (tmp_path / "brief.toml").write_bytes(LEAST.replace(old, new).encode("utf-8"))
     assert read(tmp_path / "brief.toml").digest == parse(LEAST).digest
 
 
 def test_only_what_is_compulsory_is_needed_and_the_rest_has_its_default():
-    """The defaults that README and the schema promise: lens as high as wide, foot on the board, PMMA at 550 nm."""
+    """The defaults the schema promises: lens as high as wide, foot on the board, PMMA at 550 nm."""
     brief = parse(LEAST)
     assert brief.material.name == "PMMA" and brief.wavelength == 0.55
     assert brief.index == brief.material.index(0.55) and brief.absorption == brief.material.absorption
@@ -156,7 +159,7 @@ def test_a_table_keeps_its_light_and_drops_its_dark_end():
 
 
 def test_beam_and_field_angle_are_met_by_the_shape():
-    """Half the peak at 6°, a tenth at 15°, 1/1000 at the end: the definitions of the two angles (trade practice)."""
+    """Half the peak at 6°, a tenth at 15°, 1/1000 at the end: the two angles defined (common practice)."""
     target = parse(BEAM).target
     level = np.interp(np.radians([0.0, 6.0, 15.0]), target.angles, target.intensity)
     # linear interpolation between rows: h²/8 of the curvature, below 2e-3 with 161 rows on a smooth shape
@@ -167,7 +170,7 @@ def test_beam_and_field_angle_are_met_by_the_shape():
 
 @pytest.mark.parametrize("ratio", [1.02, 1.1, 1.5, 1.82, 3.0, 6.0])
 def test_the_table_of_a_beam_follows_its_formula_between_rows(ratio):
-    """Linear interpolation of the rows differs from exp(−ln2 (θ/θ50)^p) by less than 1 % of the peak anywhere."""
+    """Linear between its rows, the table is within 1 % of the peak of exp(−ln2 (θ/θ50)^p)."""
     beam = 0.2
     angles, values = beam_shape.table(beam, beam * ratio)
     p = math.log(math.log(10) / math.log(2)) / math.log(ratio)
@@ -279,7 +282,7 @@ def test_an_effort_from_the_command_line_wins_and_is_recorded():
 
 @pytest.mark.parametrize("index, count", [(1.41, 1), (1.4143, 0)])
 def test_an_index_below_root_two_is_noted(index, count):
-    """A flank behind a wall meets its steepest light at 45° + i'/2, reflecting it totally only for n >= √2."""
+    """The flank meets sideways light at 45° + i'/2 and reflects it totally only for n >= √2."""
     assert len(parse(LEAST.replace("aperture_mm", f"index = {index}\naperture_mm")).notes) == count
 
 
@@ -289,9 +292,12 @@ def test_a_spot_wider_than_the_port_can_fill_is_noted():
     assert len(notes) == 1 and "48.5 deg" in notes[0]
 
 
-@pytest.mark.parametrize("name, k", [("k070", 0.7), ("k100", 1.0), ("k125", 1.25), ("k150", 1.5), ("k200", 2.0)])
+REFERENCES = {"k070": 0.7, "k100": 1.0, "k125": 1.25, "k150": 1.5, "k200": 2.0}
+
+
+@pytest.mark.parametrize("name, k", REFERENCES.items())
 def test_reference_briefs_have_their_etendue_ratio(name, k):
-    """(R sinθ / r)² = k² for a disk of radius r = 1 mm: étendue of aperture and cone over that of the disk."""
+    """(R sinθ / r)² = k² with r = 1 mm: étendue of aperture and cone over that of the disk."""
     brief = read(CONFIGS / "reference" / f"{name}.toml")
     assert brief.name == name and brief.emitter.dies == (Disk(1.0),) and brief.target.share is None
     ratio = (brief.envelope.radius * math.sin(brief.target.half_angle)) ** 2
@@ -354,7 +360,7 @@ k = 1
     (("nowhere",), 1),
 ])
 def test_every_key_is_found_on_its_line(path, line):
-    """Strings over lines, comments, nested lists, inline tables and arrays of tables do not confuse the count."""
+    """Long strings, comments, nested lists, inline and repeated tables do not confuse the count."""
     assert line_of(positions(LINED), path) == line
 
 

@@ -243,7 +243,8 @@ CASES += [
     (("radius_mm = 1.3\n", ""), "[emitter.dome]", ("emitter.dome: missing radius_mm",)),
     (("radius_mm = 1.3", "radius_mm = 0.7"), "radius_mm = 0.7",
      ("the dice reach 0.70711 mm", "wanted a radius of 0.997")),
-    (("radius_mm = 1.3", "radius_mm = 0.9"), "radius_mm = 0.9", ("total reflection inside the dome", "0.6383 mm")),
+    (("radius_mm = 1.3", "radius_mm = 0.9"), "radius_mm = 0.9",
+     ("total reflection inside the dome", "0.6383 mm")),
     # the lens
     (('material = "PMMA"', 'material = "PMMB"'), "material", ("unknown material", "PMMA")),
     (('material = "PMMA"', "material = 7"), "material", ("got 7, wanted the name of a material",)),
@@ -406,12 +407,12 @@ def unreadable(path):
 
 
 def test_all_faults_of_all_sections_are_reported_at_once():
-    """One wrong key in each of six sections and a wrong name make seven problems, in the order of the file."""
-    text = edited('name = "good"', "name = 1", "side_mm = 1.0", "side_mm = -1", "aperture_mm = 22.0", "aperture_mm = 0",
-                  "share = 0.75", "share = 2", 'medium = "air"', 'medium = "gas"', "rim_mm = 0.5", "rim_mm = true",
-                  "seed = 3", "sead = 3")
-    keys = ["name", "emitter.side_mm", "lens.aperture_mm", "target.share", "surroundings.medium", "mould.rim_mm",
-            "search.sead"]
+    """A wrong name and one wrong key in each of six sections: seven problems, in the order of the file."""
+    text = edited('name = "good"', "name = 1", "side_mm = 1.0", "side_mm = -1", "aperture_mm = 22.0",
+                  "aperture_mm = 0", "share = 0.75", "share = 2", 'medium = "air"', 'medium = "gas"',
+                  "rim_mm = 0.5", "rim_mm = true", "seed = 3", "sead = 3")
+    keys = ["name", "emitter.side_mm", "lens.aperture_mm", "target.share", "surroundings.medium",
+            "mould.rim_mm", "search.sead"]
     assert [p.split(": ")[1] for p in problems(text)] == keys
 
 
@@ -441,7 +442,8 @@ def test_a_file_that_is_no_brief_is_refused(tmp_path, content, line, pieces):
     file = tmp_path / "brief.toml"
     file.write_bytes(content)
     problem = unreadable(file)
-    assert problem.startswith(f"{file}:{line}: " if line else f"{file}: ") and all(p in problem for p in pieces)
+    assert problem.startswith(f"{file}:{line}: " if line else f"{file}: ")
+    assert all(p in problem for p in pieces)
 
 
 def test_a_missing_brief_is_refused(tmp_path):
@@ -502,9 +504,12 @@ def test_a_table_file_that_is_not_text_is_refused(tmp_path):
     assert unreadable(tmp_path / "good.toml").startswith(f"{tmp_path / 'beam.csv'}:2: ")
 
 
-@pytest.mark.parametrize("name", ["../outside.csv", "sub/../../outside.csv", "link.csv", "linked/outside.csv"])
+OUTSIDE = ["../outside.csv", "sub/../../outside.csv", "link.csv", "linked/outside.csv"]
+
+
+@pytest.mark.parametrize("name", OUTSIDE)
 def test_no_table_is_read_from_outside_the_folder(tmp_path, name):
-    """Neither dots nor symbolic links lead out of the folder of the brief, though the file is a good table."""
+    """Neither dots nor links lead out of the folder of the brief, though the file is a good table."""
     (tmp_path / "outside.csv").write_text("0,1\n10,0\n")
     here = tmp_path / "here"
     here.mkdir()
