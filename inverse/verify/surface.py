@@ -62,22 +62,31 @@ class Points:
 
     @classmethod
     def read(cls, path):
-        """From a ``profile.csv``; ValueError names the line that cannot be used."""
-        names, rows = [], []
-        with open(path, newline="") as file:
-            reader = csv.DictReader(file)
-            missing = [h for h in HEADER if h not in (reader.fieldnames or ())]
-            if missing:
-                raise ValueError(f"{path}: column {missing[0]} is missing; wanted {', '.join(HEADER)}")
+        """From a ``profile.csv`` (lines that start with # are remarks); ValueError names a line of no use."""
+        names, rows, place = [], [], None
+        with open(path, newline="", encoding="utf-8") as file:
+            reader = csv.reader(file)
             for line in reader:
-                if not names or line["curve"] != names[-1]:
-                    names.append(line["curve"])
-                    rows.append([])
+                if not line or line[0].startswith("#"):
+                    continue
+                if place is None:
+                    missing = [h for h in HEADER if h not in line]
+                    if missing:
+                        raise ValueError(f"{path}: column {missing[0]} is missing; wanted {', '.join(HEADER)}")
+                    place = [line.index(h) for h in HEADER]
+                    continue
                 try:
-                    rows[-1].append([float(line[h]) for h in HEADER[1:]])
-                except (TypeError, ValueError):
-                    raise ValueError(f"{path}:{reader.line_num}: wanted four numbers, got {line}") from None
-        return cls(tuple(names), tuple(np.array(r, float) for r in rows))
+                    name, *numbers = (line[k] for k in place)
+                    numbers = [float(x) for x in numbers]
+                except (IndexError, ValueError):
+                    raise ValueError(f"{path}:{reader.line_num}: wanted a name and 4 numbers, got {line}") from None
+                if not names or name != names[-1]:
+                    names.append(name)
+                    rows.append([])
+                rows[-1].append(numbers)
+        if not rows:
+            raise ValueError(f"{path}: no points in it; export the lens again")
+        return cls(tuple(names), tuple(np.array(r) for r in rows))
 
     @classmethod
     def of(cls, section, per_curve=400):

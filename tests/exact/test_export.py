@@ -11,6 +11,7 @@ from hand_built import cone_pocket, lens, polygon
 
 from inverse.export import atomic, cad, folder, lens_json, solid, table
 from inverse.photometry import FarField
+from inverse.verify.surface import Points
 
 
 def test_a_failed_writing_leaves_the_old_file(tmp_path):
@@ -144,6 +145,15 @@ def test_profile_table_carries_the_stamp(tmp_path):
     table.write_profile(tmp_path / "profile.csv", lens(), 2, stamp={"version": "0.1.0", "note": "two\nlines"})
     lines = (tmp_path / "profile.csv").read_text().splitlines()
     assert lines[1:4] == ["# version 0.1.0", "# note two lines", "curve,r_mm,z_mm,tangent_r,tangent_z"]
+
+
+def test_the_verifier_reads_the_profile_table(tmp_path):
+    """What the verifier reads from the file is what it would take from the section in memory, bit for bit."""
+    table.write_profile(tmp_path / "profile.csv", lens(True), stamp={"version": "0.1.0"})
+    read, taken = Points.read(tmp_path / "profile.csv"), Points.of(lens(True))
+    assert read.names == taken.names
+    for a, b in zip(read.curves, taken.curves):
+        np.testing.assert_array_equal(a, b)
 
 
 @pytest.mark.parametrize(
