@@ -56,7 +56,10 @@ def refusal(fault):
 def door(*, debug=False, as_json=False):
     """Everything a command does happens inside; whatever goes wrong leaves by SystemExit with its code."""
     try:
-        yield
+        try:
+            yield
+        finally:
+            sys.stdout.flush()  # a reader that has gone is noticed here, not after the last line of Python
     except BrokenPipeError:
         _close_stdout()
         raise SystemExit(Exit.FAULT) from None
