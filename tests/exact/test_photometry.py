@@ -67,6 +67,11 @@ def test_first_angle_off_the_axis():
     )
 
 
+def test_no_light_beyond_the_table():
+    """Intensity is linear between the angles and zero beyond the last, even if that row is not."""
+    assert list(field([0.0, 0.2], [50.0, 30.0]).at([0.1, 0.2, 0.2001, 3.0])) == [40.0, 30.0, 0.0, 0.0]
+
+
 def test_flux_error_adds_independent_entries():
     """The flux is linear in the entries; its error is the root sum of squares of each entry's own effect."""
     theta, candela, se = (
