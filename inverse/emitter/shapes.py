@@ -51,9 +51,10 @@ class Disk:
         r, d = np.asarray(radius, float), np.hypot(self.x, self.y)
         rise = r**2 + d**2 - self.radius**2
         across = 2 * r * d
-        # At r = 0 or d = 0 the circle lies wholly inside or outside, as the sign of `rise` says.
-        cosine = np.where(across > 0, rise / np.where(across > 0, across, 1.0), np.sign(rise))
-        return 2 * r * np.arccos(np.clip(cosine, -1.0, 1.0)) if d > 0 else 2 * np.pi * r * (rise <= 0)
+        if d == 0:
+            return 2 * np.pi * r * (rise <= 0)
+        cosine = rise / np.where(across > 0, across, 1.0)  # any will do at r = 0, where the arc is zero
+        return 2 * r * np.arccos(np.clip(cosine, -1.0, 1.0))
 
 
 @dataclass(frozen=True)

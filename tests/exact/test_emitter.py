@@ -57,7 +57,9 @@ def test_arc_at_the_axis_is_zero():
 
 def test_arc_densities_of_several_dice_add():
     """Four dice carry the sum of their arcs, although alike ones are computed once only."""
-    odd = (*DICE, Rectangle(0.4, 0.8, 2.0, 0.1), Rectangle(0.8, 0.4, 0.1, -2.0), Disk(0.2, -2.0, 0.0))
+    turned = (Rectangle(0.4, 0.8, 2.0, 0.1), Rectangle(0.8, 0.4, 0.1, -2.0))
+    only_moved = (Rectangle(0.4, 0.8, -0.1, 2.0), Disk(0.2, -2.0, 0.0))  # not alike: it was not turned as well
+    odd = (*DICE, *turned, *only_moved)
     r = np.linspace(0.0, 2.6, 50)
     np.testing.assert_allclose(Emitter(odd).arc_density(r), sum(d.arc(r) for d in odd), atol=1e-13)
 
@@ -158,6 +160,7 @@ def test_brightest_direction_of_a_law():
     assert CosinePower(0.5).brightest == np.inf
     even = Table(np.array([0.0, rad(60.0)]), np.array([3.0, 3.0]))
     assert even.brightest == pytest.approx(6.0, rel=1e-12)  # 3/cos 60°
+    assert Table(np.array([0.0, rad(90.0)]), np.array([1.0, 0.5])).brightest == np.inf
 
 
 def test_a_dome_sets_index_and_keep_out():

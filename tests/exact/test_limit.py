@@ -107,17 +107,19 @@ def test_etendue_of_two_coaxial_disks_in_air(radius, spot, apart):
 
 
 @pytest.mark.parametrize("path", [((300.0, 1.0),), ((2.0, 1.0), (5.0, 1.49), (300.0, 1.334)), ((8.0, 1.0),)])
-def test_pair_density_integrates_to_the_etendue_of_the_pair(path):
-    """∫ dE/ds ds = E, through air and through a port into water."""
-    radius, spot, count = 10.0, 25.0, 4000
-    s = radius * (np.arange(count) + 0.5) / count  # |s| <= radius · 1
-    total = 2 * np.sum(skewness.pair_density(s, radius, spot, path, steps=200)) * radius / count
+@pytest.mark.parametrize("radius, spot", [(10.0, 25.0), (25.0, 10.0), (10.0, 10.0)])
+def test_pair_density_integrates_to_the_etendue_of_the_pair(radius, spot, path):
+    """∫ dE/ds ds = E, through air and through a port into water, for either disk the larger."""
+    count = 4000
+    s = 10.0 * (np.arange(count) + 0.5) / count  # |s| <= the smaller radius, as p <= 1
+    total = 2 * np.sum(skewness.pair_density(s, radius, spot, path, steps=200)) * 10.0 / count
     assert total == pytest.approx(etendue.of_pair(radius, spot, path), rel=1e-4)
 
 
 def test_overlap_of_circles():
     """Half-covered equal circles at a distance R share R² (2π/3 − √3/2); apart or inside are plain."""
     assert etendue.common_area(1.0, 1.0, np.array(1.0)) == pytest.approx(2 * math.pi / 3 - math.sqrt(3) / 2, rel=1e-14)
+    assert etendue.common_area(1.0, 1.0, np.array(0.0)) == pytest.approx(math.pi, rel=1e-14)
     assert etendue.common_area(1.0, 2.0, np.array(3.5)) == pytest.approx(0.0, abs=1e-14)
     assert etendue.common_area(1.0, 2.0, np.array(0.5)) == pytest.approx(math.pi, rel=1e-14)
 
@@ -231,6 +233,30 @@ def test_a_peaked_shape_is_limited_in_its_inner_cones():
     spot = bound(SQUARE, radius_for(0.8, SQUARE), 12.0, SPOT, AIR, N)
     found = bound(SQUARE, radius_for(0.8, SQUARE), 12.0, peaked, AIR, N)
     assert found.skewness_ceiling == pytest.approx(spot.etendue_ratio / 2, rel=5e-3)  # sin θ against θ at 5.7°
+
+
+def flat_shape(half_angle, distance=None):
+    """Even intensity up to the edge."""
+    return Target("shape", half_angle, distance, None, np.array([0.0, half_angle]), np.array([1.0, 1.0]))
+
+
+def test_a_shape_wider_than_a_port_allows_is_impossible():
+    """Even intensity out to 60° in water asks for light where a flat port gives none."""
+    assert bound(SQUARE, 10.0, 12.0, flat_shape(rad(60.0)), WATER, N).ceiling == 0.0
+    assert bound(SQUARE, 10.0, 12.0, flat_shape(rad(48.0)), WATER, N).ceiling > 0.9
+
+
+def test_a_shape_on_a_near_plane_is_limited_by_the_disk_formula():
+    """share ≤ L E(r) D²/cos³ θ / f with E of a shining disk (from memory, as above), the lens without height."""
+    radius, distance, edge = 0.7, 30.0, rad(40.0)
+    theta = np.linspace(0.0, edge, 2001)
+    k = distance**2 * (1 + np.tan(theta) ** 2) - radius**2
+    lit = math.pi / 2 * (1 - k / np.sqrt(k**2 + 4 * distance**2 * radius**2))
+    wanted = 1 / (2 * math.pi * (1 - math.cos(edge)))
+    expected = np.min(lit * distance**2 / np.cos(theta) ** 3) / wanted / etendue.of_emitter(SQUARE)
+    found = bound(SQUARE, radius, 0.0, flat_shape(edge, distance), AIR, N).brightness_ceiling
+    assert 0.2 < expected < 0.95
+    assert found == pytest.approx(expected, rel=1e-4)
 
 
 def test_brightness_of_a_square_die():

@@ -108,6 +108,15 @@ def test_a_taller_lens_never_lowers_the_ceiling_of_a_near_spot(distance, surroun
     assert shares[0] < shares[-1] - 1e-3  # it does matter here
 
 
+def test_a_taller_lens_never_lowers_the_ceiling_of_a_near_shape():
+    """Far off the axis a low exit face lights a near plane better than a high one; a tall lens may have either."""
+    shape = Target("shape", 1.0, 30.0, None, np.array([0.0, 1.0]), np.array([1.0, 1.0]))
+    emitter = Emitter((Rectangle(1.0, 1.0),))
+    found = [bound(emitter, 0.7, h, shape, AIR, 1.49).brightness_ceiling for h in (0.0, 10.0, 25.0)]
+    assert found[0] < 0.95  # a real limit
+    assert np.all(np.diff(found) >= -1e-12)
+
+
 def test_cutting_a_die_into_touching_pieces_changes_nothing():
     """Four quarters of a square, side by side, are the square."""
     whole = Emitter((Rectangle(1.0, 1.0),))
