@@ -46,7 +46,7 @@ def intensity_per_radiance(theta, radius, surroundings):
 
 
 def illuminance_per_radiance(off_axis, radius, path, *, steps=400):
-    """E/L (k,) in sr at points ``off_axis`` mm of a plane, lit along ``path`` by an aperture of ``radius`` mm."""
+    """E/L (k,) in sr at points ``off_axis`` mm of a plane lit by a disk of ``radius`` mm along ``path``."""
     r = np.asarray(off_axis, float)[:, None]
     whole, last = largest_slant(path, np.abs(radius - r)), largest_slant(path, radius + r)
     x = (np.arange(steps) + 0.5) / steps

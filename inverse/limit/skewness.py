@@ -39,7 +39,7 @@ from inverse.limit.etendue import largest_slant, of_emitter, shift
 from inverse.limit.transmission import unpolarised
 
 SKEW, SLANT, PLACE = 400, 128, 12  # steps in s, θ and (domes only) u
-# Twice as many steps move shares by 3e-5 at most, by 1e-4 under a dome that traps light (seen on 18 emitters).
+# Twice as many steps moved the shares of 18 emitters by up to 3e-5, with trapped light by 1e-4.
 
 
 def _midpoints(count):

@@ -79,7 +79,7 @@ def test_every_constant_has_a_source_and_every_source_a_constant(name):
 
 @pytest.mark.parametrize("name", ["PMMA", "PC", "COP"])
 def test_mould_temperatures_are_in_order(name):
-    """A part is ejected above the mould's temperature and below the melt's, or the cooling time has no value."""
+    """A part is ejected warmer than the mould and cooler than the melt, or its cooling time has no value."""
     m = MATERIALS[name]
     assert m.mould < m.eject < m.melt
 

@@ -30,8 +30,13 @@ def test_square_source_density_by_area_quadrature():
 
     source = lay_out(Emitter((Rectangle(1.0, 1.0),)))
     for s in (0.05, 0.2, 0.35):
-        inner = lambda y, x, s=s: 2 / math.hypot(x, y) * math.sqrt(max(1 - s * s / (x * x + y * y), 0.0))  # noqa: E731
-        low = lambda x, s=s: math.sqrt(max(s * s - x * x, 0.0))  # noqa: E731
+
+        def inner(y, x, s=s):
+            return 2 / math.hypot(x, y) * math.sqrt(max(1 - s * s / (x * x + y * y), 0.0))
+
+        def low(x, s=s):
+            return math.sqrt(max(s * s - x * x, 0.0))
+
         expected = 4 * sum(
             dblquad(inner, a, b, low, 0.5, epsabs=1e-7, epsrel=1e-7)[0] for a, b in ((0.0, s), (s, 0.5))
         )
@@ -45,7 +50,7 @@ def spread(dimension, seed):
 
 
 def rays(emitter, seed):
-    """Skewness, radiance outside (relative) and étendue weight of rays drawn evenly over the dies and over p."""
+    """Skewness, relative radiance outside and étendue weight of rays drawn evenly over dies and p."""
     u = spread(5, seed)
     x, y = emitter.sample(*u[:3])
     n = emitter.index
@@ -57,7 +62,8 @@ def rays(emitter, seed):
     if emitter.dome:
         d = np.stack([sine * np.cos(phi), sine * np.sin(phi), np.cos(theta)])
         start = np.stack([x, y, np.zeros(COUNT)])
-        along = -np.sum(start * d, 0) + np.sqrt(np.sum(start * d, 0) ** 2 - x**2 - y**2 + emitter.dome.radius**2)
+        middle = -np.sum(start * d, 0)
+        along = middle + np.sqrt(middle**2 - x**2 - y**2 + emitter.dome.radius**2)
         cos_in = np.sum((start + along * d) * d, 0) / emitter.dome.radius
         sin_out = n * np.sqrt(np.maximum(1 - cos_in**2, 0.0))
         cos_out = np.sqrt(np.maximum(1 - sin_out**2, 0.0))
@@ -72,7 +78,8 @@ def filled(emitter, target_skew, target_weight, seed, bins=40):
     skew, radiance, weight = rays(emitter, seed)
     top = skew.max() * 1.0001
     where = np.minimum((skew / top * bins).astype(int), bins - 1)
-    room = np.bincount(np.minimum((target_skew / top * bins).astype(int), bins), minlength=bins + 1) * target_weight
+    row = np.minimum((target_skew / top * bins).astype(int), bins)  # last row: beyond all light
+    room = np.bincount(row, minlength=bins + 1) * target_weight
     order = np.lexsort((-radiance, where))
     where, radiance = where[order], radiance[order]
     first = np.searchsorted(where, np.arange(bins))
@@ -85,7 +92,8 @@ def filled(emitter, target_skew, target_weight, seed, bins=40):
 def far_rays(radius, cone, seed):
     """Skewness of rays even over the aperture and over |p| < cone, and the étendue each stands for."""
     u = spread(3, seed)
-    return np.abs(radius * cone * np.sqrt(u[0] * u[1]) * np.sin(2 * np.pi * u[2])), (np.pi * radius * cone) ** 2 / COUNT
+    skew = np.abs(radius * cone * np.sqrt(u[0] * u[1]) * np.sin(2 * np.pi * u[2]))
+    return skew, (np.pi * radius * cone) ** 2 / COUNT
 
 
 def near_rays(radius, spot, path, seed):
@@ -105,7 +113,8 @@ EMITTERS = {
     ),
     "off-axis disk and bar": Emitter((Disk(0.4, 0.5, 0.2), Rectangle(1.5, 0.3, 0.0, -0.7))),
     "table": Emitter(
-        (Rectangle(2.0, 1.0),), law=Table(rad(np.array([0.0, 40.0, 70.0, 90.0])), np.array([0.7, 1.0, 0.4, 0.0]))
+        (Rectangle(2.0, 1.0),),
+        law=Table(rad(np.array([0.0, 40.0, 70.0, 90.0])), np.array([0.7, 1.0, 0.4, 0.0])),
     ),
     "dome": Emitter((Rectangle(1.0, 1.0),), dome=Dome(1.2, 1.5)),
     "tight dome": Emitter((Rectangle(1.0, 1.0),), dome=Dome(0.8, 1.53)),
@@ -150,6 +159,7 @@ def test_rays_in_a_shaped_target_obey_its_inner_cones():
     emitter = EMITTERS["square"]
     shape = Target("shape", 0.1, angles=np.array([0.0, 0.05, 0.1]), intensity=np.array([1.0, 0.4, 0.0]))
     found = bound(emitter, 5.0, 10.0, shape, AIR, 1.49)
-    wanted = [quad(lambda t: np.interp(t, shape.angles, shape.intensity) * math.sin(t), 0, a)[0] for a in (0.025, 0.1)]
+    flux = lambda t: np.interp(t, shape.angles, shape.intensity) * math.sin(t)  # noqa: E731
+    wanted = [quad(flux, 0, edge)[0] for edge in (0.025, 0.1)]
     inner = filled(emitter, *far_rays(5.0, math.sin(0.025), 1), 101)
     assert found.skewness_ceiling <= inner / (wanted[0] / wanted[1]) * 1.01  # 1 %: noise of the small cone

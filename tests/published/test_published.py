@@ -56,7 +56,8 @@ def _bulk_loss(name, path_mm):
 @quantity("material.slab_transmittance", "1")
 def _slab_transmittance(name, thickness_mm, wavelength_um):
     m = material.by_name(name)
-    return transmission.faces_with_returns(m.index(wavelength_um), AIR) * math.exp(-m.absorption * thickness_mm)
+    clear = transmission.faces_with_returns(m.index(wavelength_um), AIR)
+    return clear * math.exp(-m.absorption * thickness_mm)
 
 
 @quantity("transmission.normal_reflectance", "1")
@@ -108,7 +109,8 @@ def _view_factor(radius, other, apart):
 @quantity("etendue.narrowest_half_angle", "deg")
 def _narrowest(side_mm, aperture_mm, dome_index=None):
     dome = Dome(3.0, dome_index) if dome_index else None
-    return deg(etendue.narrowest_half_angle(Emitter((Rectangle(side_mm, side_mm),), dome=dome), aperture_mm / 2, AIR))
+    emitter = Emitter((Rectangle(side_mm, side_mm),), dome=dome)
+    return deg(etendue.narrowest_half_angle(emitter, aperture_mm / 2, AIR))
 
 
 SOURCES = {
