@@ -13,7 +13,7 @@ import typer
 
 from inverse.cli import engine, watch
 from inverse.cli.door import Refused, door, interruptible
-from inverse.outcome import Exit
+from inverse.outcome import BeyondLimit, Exit
 from inverse.refine.plan import EFFORTS
 
 app = typer.Typer(
@@ -60,11 +60,27 @@ def _read(path, effort=None):
     return briefs.read(path, effort=effort.value if effort else None)
 
 
+def _missing(wanted, found):
+    """Why a design would be refused, with the nearest possible beams; [] when the limit allows it."""
+    box, target = wanted.envelope, wanted.target
+    if target.share is None or target.share <= found["ceiling_with_losses"]:
+        return []
+    from inverse import limit as physics
+
+    try:
+        physics.refuse_impossible(
+            wanted.emitter, box.radius, box.height, target, wanted.surroundings, wanted.index
+        )
+    except BeyondLimit as fault:
+        return [str(fault)]
+    return []  # light that returns after two reflections can carry a lens a little over the uncoated faces
+
+
 def _own_folder(out, name, resume):
     """``out``/``name``, made and tried for writing before minutes of work; and whether it was made here."""
     folder = out / name
-    if resume and not (folder / "lens.json").is_file():
-        sentence = f"{folder}: no run to resume there, wanted lens.json in it. Leave out --resume."
+    if resume and not folder.is_dir():
+        sentence = f"{folder}: no run to resume there. Leave out --resume."
         raise Refused(Exit.BRIEF, "nothing to resume", [sentence])
     made = not folder.exists()
     folder.mkdir(parents=True, exist_ok=True)
@@ -89,20 +105,17 @@ def limit(brief: Brief, as_json: Json = False, debug: Debug = False):
 
         engine.prepare_if_loaded()
         found = pipeline.limits(wanted)
-        share = wanted.target.share
-        possible = share is None or share <= found["ceiling"]
-        code = Exit.DONE if possible else Exit.BEYOND_LIMIT
+        missing = _missing(wanted, found)
+        code = int(Exit.BEYOND_LIMIT if missing else Exit.DONE)
         if as_json:
             stamp = {"name": wanted.name, "brief_sha256": wanted.digest, "notes": wanted.notes}
-            _show_json({**stamp, "verdict": {"exit_code": int(code)}, "limit": found})
+            _show_json({**stamp, "verdict": {"exit_code": code, "missing": missing}, "limit": found})
         else:
             page = _page(sys.stdout)
             verdict.limits(page, wanted, found)
-            for sentence in wanted.notes:
+            for sentence in [*wanted.notes, *missing]:
                 page.line(sentence)
-            if not possible:
-                page.line(f"The share of {share:g} that the brief asks for is beyond the limit.")
-        raise SystemExit(int(code))
+        raise SystemExit(code)
 
 
 @app.command()

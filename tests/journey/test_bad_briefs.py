@@ -5,6 +5,7 @@ found by plain search, or by number) and pieces the message must hold.
 """
 
 import os
+from random import Random
 
 import pytest
 
@@ -532,3 +533,31 @@ def test_a_folder_is_not_a_table(tmp_path):
     (tmp_path / "beam.csv").mkdir()
     (tmp_path / "good.toml").write_text(WITH_FILE)
     assert 'target.table_file: "beam.csv" is a folder, wanted a file' in unreadable(tmp_path / "good.toml")
+
+
+SCRAPS = [
+    '"', "\n", "[", "]]", "{", "}", "=", ",", ".", "'''", '"""', "\\", "#", "nan", "true", "1e400", "0xff",
+    "é", "\u2028", "-1", "99999999999999999999", "[emitter]\n", "[[emitter.die]]\n", "\x00", "\t", "\r\n",
+    "port = {}\n", "distance_mm = 100\n", "index = 1.5\n", 'medium = "water"\n', "die = [{}]\n",
+    "law_table = [[0,1],[90,0]]\n",
+]
+
+
+@pytest.mark.parametrize("seed", range(10))
+def test_random_damage_is_always_answered_with_a_line(seed):
+    """Of 100 damaged briefs each is read, or refused with lines that exist; nothing else is raised."""
+    random = Random(seed)
+    refused = 0
+    for _ in range(100):
+        text = GOOD
+        for _ in range(random.randint(1, 4)):
+            at = random.randrange(len(text) + 1)
+            text = text[:at] + random.choice(SCRAPS) + text[at + random.randint(0, 8) :]
+        try:
+            parse(text, "good.toml")
+        except BriefError as fault:
+            refused += 1
+            for problem in fault.problems:
+                line = int(problem.removeprefix("good.toml:").split(":")[0])
+                assert 1 <= line <= text.count("\n") + 1 and problem.isprintable(), (text, problem)
+    assert refused > 50

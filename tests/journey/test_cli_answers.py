@@ -28,6 +28,7 @@ share = 0.7
 """
 LIMIT = {
     "ceiling": 0.812,
+    "ceiling_with_losses": 0.7498,
     "etendue_ratio": 1.0927,
     "skewness_ceiling": 0.9996,
     "brightness_ceiling": 1.0,
@@ -136,16 +137,18 @@ def test_limit_prints_what_no_lens_can_beat(bench):
 
 
 def test_limit_says_when_the_brief_is_beyond_it(bench):
-    """A share above the ceiling ends with 3, and the figures are shown all the same."""
-    bench.brief.write_text(BRIEF.replace("0.7", "0.9"))
+    """More than uncoated faces pass ends with 3, with the figures and the nearest possible share."""
+    bench.brief.write_text(BRIEF.replace("0.7", "0.95"))
     done = bench.run("limit", bench.brief)
-    assert done.exit_code == Exit.BEYOND_LIMIT and "0.9 that the brief asks for is beyond" in done.stdout
+    assert done.exit_code == Exit.BEYOND_LIMIT and "92.34 %" in done.stdout
+    assert "a share of 0.95 within 6 deg is impossible" in done.stdout and "Ask for a share of" in done.stdout
 
 
 def test_limit_as_json_is_one_document(bench):
     """The limit block under its name, with the digest of the brief and the code."""
     answer = json.loads(bench.run("limit", bench.brief, "--json").stdout)
-    assert answer["limit"] == LIMIT and answer["name"] == "lamp" and answer["verdict"] == {"exit_code": 0}
+    assert answer["limit"] == LIMIT and answer["name"] == "lamp"
+    assert answer["verdict"] == {"exit_code": 0, "missing": []}
     assert answer["brief_sha256"] == bench.seen["limits"].digest
 
 
