@@ -25,12 +25,13 @@ def hand_over(
     aperture_radius,
     lamp="LED",
     watts=0.0,
+    run=None,
 ):
     """Write all files into ``folder`` (made when missing); returns (file names, notes about what is missing).
 
     ``density`` g/mm³ or None, ``index`` at ``wavelength`` µm, ``stamp`` word → value, ``far_field`` a
     `FarField`, ``flux`` lm the LED emits, ``date`` ISO, ``aperture_radius`` mm, ``lamp`` the LED in words,
-    ``watts`` electrical (0 = not stated).  Raises SolidError when the section makes no sound solid, OSError.
+    ``watts`` electrical (0 = not stated), ``run`` JSON-ready facts of the search kept in lens.json.  Raises SolidError when the section makes no sound solid, OSError.
     Without the CAD extra, and where the beam does not fit a format, the file is left out with a note.
     """
     folder = Path(folder)
@@ -53,7 +54,7 @@ def hand_over(
         "wavelength_um": wavelength,
         "density_g_mm3": density,
     }
-    facts = {"name": name, "stamp": stamp} | made_of
+    facts = {"name": name, "stamp": stamp, "run": run} | made_of
     lens_json.write(folder / "lens.json", section, facts)
     table.write_profile(folder / "profile.csv", section, stamp=stamp)
     files += ["lens.json", "profile.csv"]

@@ -25,7 +25,6 @@ from inverse.units import rad
 FIELD, LENGTH = 6, 4  # characters of an angle or an intensity, of a length in mm
 TOLERANCE = 0.004  # of the peak, for leaving out rows; with the printed digits below 0.5 %
 DECIMALS = 3  # of a degree: 99.999 fills the field
-MOST_PER_KLM = 999_999.0  # what the field can hold
 HEAD = ("maker", "type", "symmetry", "planes", "plane distance", "angles", "angle distance", "report", "name",
         "number", "file", "date", "length", "width", "height", "luminous length", "luminous width",
         "luminous height C0", "luminous height C90", "luminous height C180", "luminous height C270",
@@ -42,10 +41,6 @@ def text(field, plate):
     degrees, candela = printable(field, DECIMALS)
     kept = thin(rad(degrees), candela, TOLERANCE)
     klm = plate.lamp_flux / 1000.0
-    if candela.max() / klm > MOST_PER_KLM:
-        raise ValueError(
-            f"{candela.max() / klm:.0f} cd per 1000 lm does not fit a EULUMDAT field of {FIELD} digits"
-        )
     angles = [_fitted(x, DECIMALS, FIELD) for x in degrees[kept]]
     values = [_fitted(x, FIELD - 2, FIELD) for x in candela[kept] / klm]
     table = printed(angles, np.array(values, float) * klm)
@@ -99,7 +94,7 @@ def _fitted(value, decimals, width):
         word = f"{value:.{k}f}"
         if len(word) <= width:
             return word.rstrip("0").rstrip(".") if "." in word else word
-    raise ValueError(f"{value} does not fit {width} characters")
+    raise ValueError(f"{value:.7g} does not fit the {width} characters of a EULUMDAT field")
 
 
 def read(path):

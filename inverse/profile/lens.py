@@ -12,7 +12,7 @@ Every curve is a graph, z(r) or r(z), on a clamped uniform cubic spline (``bspli
 construction: there is no number that could break them.
 """
 
-from dataclasses import dataclass, field
+from dataclasses import dataclass
 from typing import NamedTuple
 
 import jax
@@ -54,7 +54,6 @@ class Lens:
     exit: jax.Array  # (e,) heights of the single face or of the ring, outward; axis counted once
     disc: jax.Array | None = None  # (d,) heights of the disc, outward
     step: jax.Array | None = None  # () radius of the step
-    spans: tuple = field(default=(), metadata=dict(static=True))  # sorted (curve, spans) pairs
 
     @property
     def stepped(self):

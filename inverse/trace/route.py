@@ -62,88 +62,85 @@ def _upward(d):
     return ok, (d[0], d[1], jnp.where(ok, d[2], 1e-3))
 
 
-def leave(p, d, weight, lost, residual, shape, glass, blur):
-    """From inside the body at ``p`` out through the exit face (or disc and ring)."""
+def leave(p, d, weight, shape, glass, blur):
+    """From inside the body at ``p`` out through the exit face, or through ring and disc.
+
+    Returns one beam a face; ``past the exit face`` is booked on the first.
+    """
     climbs, d = _upward(d)
     soft = lambda x: jax.nn.sigmoid(x / blur)
     step = lambda graph: intersect.with_height(p, d, graph, (graph.at(intersect.radius(p))[0] - p[2]) / d[2])
     hits = [step(shape.exit)]
-    outer = soft(shape.exit.end - intersect.radius(hits[0][0]))
-    if shape.disc is None:
-        parts = [(hits[0], outer * climbs, None)]
-    else:
+    outer = soft(shape.exit.end - intersect.radius(hits[0][0])) * climbs
+    windows = [outer]
+    if shape.disc is not None:
         hits.append(step(shape.disc))
         on_ring = soft(intersect.radius(hits[0][0]) - shape.exit.start)
         on_disc = soft(shape.disc.end - intersect.radius(hits[1][0]))
         ring_low = shape.exit.coefficients[0] < shape.disc.coefficients[-1]
-        to_disc = on_disc * jnp.where(ring_low, 1.0 - on_ring, 1.0)
-        to_ring = on_ring * jnp.where(ring_low, 1.0, 1.0 - on_disc) * outer
-        parts = [(hits[0], to_ring * climbs, "ring"), (hits[1], to_disc * climbs, "disc")]
+        windows = [
+            on_ring * jnp.where(ring_low, 1.0, 1.0 - on_disc) * outer,
+            on_disc * jnp.where(ring_low, 1.0 - on_ring, 1.0) * climbs,
+        ]
     beams = []
-    for (q, m, res), window, part in parts:
+    for part, ((q, m, residual), window) in enumerate(zip(hits, windows)):
         path = jnp.exp(-glass.absorption * _distance(p, q)) if glass.absorption else 1.0
         out, passed = interface.refract(d, m, glass.index, 1.0)
         clear = jnp.ones_like(window)
-        if part == "ring":  # a low ring may shine into the step's outside
-            edge = _radius_at(q, _upward(out)[1], shape.disc.coefficients[-1])
-            clear = jnp.where(ring_low, soft(edge - shape.disc.end), 1.0)
-        if part == "disc":
-            edge = _radius_at(q, _upward(out)[1], shape.exit.coefficients[0])
-            clear = jnp.where(ring_low, 1.0, soft(shape.exit.start - edge))
+        if shape.disc is not None:  # the lower face may shine into the side of the step
+            other = shape.exit.coefficients[0] if part else shape.disc.coefficients[-1]
+            edge = _radius_at(q, _upward(out)[1], other)
+            if part:
+                clear = jnp.where(ring_low, 1.0, soft(shape.exit.start - edge))
+            else:
+                clear = jnp.where(ring_low, soft(edge - shape.disc.end), 1.0)
         entered = weight * window
-        booked = {
+        lost = {
             "absorbed in the material": entered * (1.0 - path),
             "exit reflection": entered * path * (1.0 - passed),
             "into the step": entered * path * passed * (1.0 - clear),
         }
-        beams.append(Beam(q, out, entered * path * passed * clear, booked, jnp.maximum(residual, res)))
-    missed = weight * (1.0 - sum(window for _, window, _ in parts))
-    first = beams[0]
-    for name, value in lost.items():
-        first.lost[name] = first.lost.get(name, 0.0) + value
-    first.lost["past the exit face"] = missed
+        beams.append(Beam(q, out, entered * path * passed * clear, lost, residual))
+    beams[0].lost["past the exit face"] = weight * (1.0 - sum(windows))
     return beams
 
 
-def centre(p, d, weight, shape, glass, blur):
-    """Through the centre lens."""
+def centre(p, d, weight, shape, glass):
+    """Through the centre lens: point, direction inside, weight, losses, residual."""
     with jax.named_scope("centre"):
         graph = shape.centre
         guess = (graph.at(intersect.radius(p))[0] - p[2]) / d[2]
         q, m, residual = intersect.with_height(p, d, graph, guess)
         inside, passed = interface.refract(d, m, 1.0, glass.index)
-        lost = {"entry reflection": weight * (1.0 - passed)}
-        return leave(q, inside, weight * passed, lost, residual, shape, glass, blur)
+        return q, inside, weight * passed, {"entry reflection": weight * (1.0 - passed)}, residual
 
 
-def direct(p, d, weight, shape, glass, blur):
-    """Through the pocket wall straight to the exit face."""
-    with jax.named_scope("direct"):
+def wall(p, d, weight, shape, glass):
+    """Through the pocket wall: point, direction inside, weight, losses, residual."""
+    with jax.named_scope("wall"):
         q, inside, passed, residual = into_wall(p, d, shape, glass)
-        lost = {"entry reflection": weight * (1.0 - passed)}
-        return leave(q, inside, weight * passed, lost, residual, shape, glass, blur)
+        return q, inside, weight * passed, {"entry reflection": weight * (1.0 - passed)}, residual
 
 
-def flank(p, d, weight, shape, glass, blur):
-    """Through the pocket wall, off the flank, to the exit face."""
+def flank(q, inside, weight, shape, glass, blur):
+    """Off the flank: point, direction, weight, losses, residual."""
     with jax.named_scope("flank"):
-        q, inside, passed, residual = into_wall(p, d, shape, glass)
-        lost = {"entry reflection": weight * (1.0 - passed)}
         far = jax.lax.stop_gradient(intersect.to_cylinder(q, inside, shape.rim_radius))
         guess = _bisect_flank(q, inside, shape.flank, far)
-        f, m, res = intersect.with_radius(q, inside, shape.flank, guess)
+        f, m, residual = intersect.with_radius(q, inside, shape.flank, guess)
         out, c = interface.reflect(inside, m)
         kept = interface.reflectance(c, glass.index, 1.0)
         path = jnp.exp(-glass.absorption * _distance(q, f)) if glass.absorption else 1.0
         corner_r, corner_z = shape.centre.end, shape.wall.end
-        soft = lambda x: jax.nn.sigmoid(x / blur)
-        climbs, safe = _upward(out)
-        past = jnp.where(f[2] < corner_z, soft(_radius_at(f, safe, corner_z) - corner_r), 1.0)
-        entered = weight * passed
-        lost["absorbed in the material"] = entered * (1.0 - path)
-        lost["flank leak"] = entered * path * (1.0 - kept)
-        lost["back into the pocket"] = entered * path * kept * (1.0 - past)
-        return leave(f, out, entered * path * kept * past, lost, jnp.maximum(residual, res), shape, glass, blur)
+        _, safe = _upward(out)
+        past = jax.nn.sigmoid((_radius_at(f, safe, corner_z) - corner_r) / blur)
+        past = jnp.where(f[2] < corner_z, past, 1.0)
+        lost = {
+            "absorbed in the material": weight * (1.0 - path),
+            "flank leak": weight * path * (1.0 - kept),
+            "back into the pocket": weight * path * kept * (1.0 - past),
+        }
+        return f, out, weight * path * kept * past, lost, residual
 
 
 def _bisect_flank(p, d, graph, far):

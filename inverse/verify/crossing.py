@@ -1,13 +1,14 @@
 """Where a ray first crosses the revolved body: no leak at a joint, no root lost at grazing.
 
-A ray p(t) = o + t d, |d| = 1, has the radius ρ(t)² = A t² + 2 B t + C with A = d_x² + d_y²,
-B = o_x d_x + o_y d_y, C = o_x² + o_y².  It meets the ring (r, z) of the body where
+A ray p(t) = o + t d, |d| = 1, runs over the plane with the speed f = √(d_x² + d_y²).  With b the part
+of o along that flat direction and a the part across it, its radius is ρ(t)² = (f t + b)² + a².  It
+meets the ring (r, z) of the body where, t being eliminated by z = o_z + t d_z,
 
-    G(r, z) = d_z² r² − [d_z² C + 2 d_z (z − o_z) B + (z − o_z)² A]
+    G(r, z) = d_z² (r² − a²) − [d_z b + (z − o_z) f]²
 
-vanishes (t eliminated by z = o_z + t d_z).  G is linear in the four numbers d_z², −A,
-2 (A o_z − d_z B) and −d_z² C + 2 d_z o_z B − o_z² A, so one matrix product evaluates it at all
-nodes of the chain for all rays, and a second one its slope D along the chain.
+vanishes.  G is a sum of four products of a number of the ring (r², −z², z, 1) and one of the ray, so
+one matrix product gives it at all nodes of the chain for all rays, a second one its slope along the
+chain.
 
 * A change of sign between two nodes brackets one root.  Neighbouring curves share the sign at
   their joint, so nothing slips through; on the axis G <= 0 always, so every line crosses the
@@ -34,7 +35,10 @@ SHALLOW = 0.05  # |d_z| below which the two crossings of a ring are told apart b
 RESIDUAL = 1e-12
 # A crossing this little behind the start, in body sizes, still counts: the start itself is rounded.
 BEHIND = 1e-11
-NEAR_ZERO = 0.05  # part of |G| at the nodes within which an estimated extremum may still reach zero
+# Part of |G| at the nodes by which the extremum may miss zero and still be looked at: as first guessed
+# from the nodes (a band bends by up to TURN), and once refined on the curve.
+NEAR_ZERO, NEARER = 0.5, 1e-3
+REFINEMENTS = 4  # secant steps that find the extremum on the curve
 ROUNDING = 1e-13  # of G, relative to its largest term
 
 
@@ -87,15 +91,18 @@ class _Rays:
 
     def __init__(self, origin, direction, inside):
         (ox, oy, self.oz), (dx, dy, self.dz) = origin.T, direction.T
-        self.A, self.B, self.C = dx * dx + dy * dy, ox * dx + oy * dy, ox * ox + oy * oy
+        self.flat = np.hypot(dx, dy)
+        safe = np.where(self.flat > 0.0, self.flat, 1.0)
+        ex, ey = np.where(self.flat > 0.0, dx / safe, 1.0), dy / safe
+        self.along, self.across = ox * ex + oy * ey, oy * ex - ox * ey
         self.sense = np.where(inside, -1.0, 1.0)  # sign of the determinant at an allowed crossing
 
 
 def _tables(chain, ray):
     """G and its slope along the chain, (nodes, k), mm² and mm."""
-    steep, mixed = ray.dz**2, 2.0 * (ray.A * ray.oz - ray.dz * ray.B)
-    constant = 2.0 * ray.dz * ray.oz * ray.B - steep * ray.C - ray.oz**2 * ray.A
-    weights = np.stack([steep, ray.A, mixed, constant])
+    # d_z along + (z − o_z) flat = base + z flat
+    base = ray.dz * ray.along - ray.oz * ray.flat
+    weights = np.stack([ray.dz**2, ray.flat**2, -2.0 * base * ray.flat, -(base**2) - (ray.dz * ray.across) ** 2])
     r, z = chain.r, chain.z
     value = np.column_stack([r * r, -z * z, z, np.ones_like(r)]) @ weights
     value[chain.twin] = value[chain.twin - 1]  # one sign a joint, whatever the rounding
@@ -119,17 +126,26 @@ def _candidates(chain, ray, value, slope):
     with np.errstate(divide="ignore", invalid="ignore"):
         s = -2.0 * g0 / (d0 + np.where(g0 < g1, root, -root))
     s = np.where((s >= 0.0) & (s <= 1.0), s, g0 / (g0 - g1))
-    # Pairs: the slope taken linear in between, its zero refined once on the curve itself.
+    # Pairs: the slope taken linear in between, its zero refined on the curve itself.
     pair, pair_at = np.nonzero(dip)
     g0, g1 = value[pair, pair_at], value[pair + 1, pair_at]
     d0, d1 = slope[pair, pair_at] * chain.length[pair], slope[pair + 1, pair_at] * chain.length[pair]
-    middle, margin = d0 / (d0 - d1), NEAR_ZERO * np.maximum(np.abs(g0), np.abs(g1)) + ROUNDING * chain.size**2
-    keep = np.sign(g0) * (g0 + 0.5 * d0 * middle) < margin
-    pair, pair_at, middle, bend = pair[keep], pair_at[keep], middle[keep], (d1 - d0)[keep]
-    for _ in range(2):
+    middle, largest, rounding = d0 / (d0 - d1), np.maximum(np.abs(g0), np.abs(g1)), ROUNDING * chain.size**2
+    keep = np.sign(g0) * (g0 + 0.5 * d0 * middle) < NEAR_ZERO * largest + rounding
+    pair, pair_at, middle, largest = (x[keep] for x in (pair, pair_at, middle, largest))
+    bend = (d1 - d0)[keep]
+    before, tilt_before = np.where(middle < 0.5, 0.0, 1.0), np.where(middle < 0.5, d0[keep], d1[keep])
+    for _ in range(REFINEMENTS):
         peak, tilt = _along(chain, ray, pair, pair_at, middle)
+        step = middle - before
+        apart = np.abs(step) > 1e-3  # closer together the difference is rounding
+        fresh = (tilt - tilt_before) / np.where(apart, step, 1.0)
+        bend = np.where(apart & (fresh * bend > 0.0), fresh, bend)
+        before, tilt_before = middle, tilt
         middle = np.clip(middle - tilt / bend, 0.0, 1.0)
     peak = peak - 0.5 * tilt * tilt / bend
+    keep = np.sign(bend) * peak < NEARER * largest + rounding
+    pair, pair_at, middle, bend, peak = (x[keep] for x in (pair, pair_at, middle, bend, peak))
     half = np.sqrt(np.maximum(-2.0 * peak / bend, 0.0)) + 1e-3  # never both from the same point
     node, at = np.concatenate([node, pair, pair]), np.concatenate([at, pair_at, pair_at])
     single = np.arange(len(node)) < len(s)
@@ -140,24 +156,25 @@ def _candidates(chain, ray, value, slope):
 def _along(chain, ray, node, at, s):
     """G and dG/ds at the part ``s`` of the band that starts at ``node``, by the formula of the docstring."""
     r, z, r1, z1 = chain.at(chain.u[node] + s * chain.span[node], chain.curve[node])
-    dz, A, B, up = ray.dz[at], ray.A[at], ray.B[at], z - ray.oz[at]
-    value = dz * dz * (r * r - ray.C[at]) - up * (2.0 * dz * B + up * A)
-    return value, 2.0 * chain.span[node] * (dz * dz * r * r1 - (dz * B + up * A) * z1)
+    dz, flat, across = ray.dz[at], ray.flat[at], ray.across[at]
+    x = dz * ray.along[at] + (z - ray.oz[at]) * flat  # d_z times the way along the flat direction
+    value = dz * dz * (r - across) * (r + across) - x * x
+    return value, 2.0 * chain.span[node] * (dz * dz * r * r1 - x * flat * z1)
 
 
 def _with_time(chain, ray, at, node, s, single):
     """The starting ``t`` of each candidate; those plainly behind or facing the wrong way are dropped."""
     r, z, r1, z1 = chain.at(chain.u[node] + s * chain.span[node], chain.curve[node])
-    dz, A, B = ray.dz[at], ray.A[at], ray.B[at]
+    dz, flat, along = ray.dz[at], ray.flat[at], ray.along[at]
     shallow = np.abs(dz) < SHALLOW
     t = (z - ray.oz[at]) / np.where(shallow, 1.0, dz)
-    facing = (dz * r1 - z1 * (A * t + B) / np.maximum(r, 1e-9 * chain.size)) / np.hypot(r1, z1)
+    x = flat * t + along
+    facing = (dz * r1 - z1 * flat * x / np.maximum(r, np.abs(x) + np.finfo(float).tiny)) / np.hypot(r1, z1)
     # The estimate is off by up to one band in z, and by the turn of a band in direction.
     keep = (t * dz * np.sign(dz) > -2.0 * chain.length[node]) & (facing * ray.sense[at] > -0.2) & ~shallow
     k = np.flatnonzero(shallow)
-    A, B, C, r = A[k], B[k], ray.C[at[k]], r[k]
-    spread = np.sqrt(np.maximum(B * B - A * (C - r * r), 1e-6 * r * r))  # two starts, also where ρ > r
-    t = np.concatenate([t[keep], (-B - spread) / A, (-B + spread) / A])
+    reach = np.sqrt(np.maximum(r[k] ** 2 - ray.across[at[k]] ** 2, 1e-6 * r[k] ** 2))  # never both the same
+    t = np.concatenate([t[keep], (-along[k] - reach) / flat[k], (-along[k] + reach) / flat[k]])
     at, node, s, single = (np.concatenate([x[keep], x[k], x[k]]) for x in (at, node, s, single))
     return at, node, s, t, single
 
@@ -173,11 +190,11 @@ def _newton(chain, ray, at, curve, t, u, steps=4, more=12):
         if not len(todo):
             break
         i, c, tt, uu = at[todo], curve[todo], t[todo], u[todo]
-        dz, A, B = ray.dz[i], ray.A[i], ray.B[i]
+        dz, flat, across = ray.dz[i], ray.flat[i], ray.across[i]
         r, z, r1, z1 = chain.at(uu, c)
-        half = A * tt + B
-        rho = np.sqrt(np.maximum((half + B) * tt + ray.C[i], 0.0))
-        rho1 = half / np.maximum(rho, np.finfo(float).tiny)
+        x = flat * tt + ray.along[i]
+        rho = np.sqrt(x * x + across * across)
+        rho1 = flat * x / np.maximum(rho, np.finfo(float).tiny)
         f1, f2 = z - ray.oz[i] - tt * dz, r - rho
         det = dz * r1 - z1 * rho1
         off[todo], facing[todo] = np.abs(f1) + np.abs(f2), det

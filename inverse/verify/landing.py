@@ -45,11 +45,16 @@ class Encircled:
 
 @dataclass(frozen=True)
 class Spot:
-    """Picture of the beam: fraction of the emitted flux in each cell, first index x, second y."""
+    """Picture of the beam, rows along y, columns along x, the axis in the middle cell.
 
-    edges: np.ndarray  # (k + 1,) the same for x and y
-    fraction: np.ndarray  # (k, k)
-    unit: str  # "mm" in the plane, "1" for direction cosines
+    In the plane cells are in mm and ``brightness`` in lx; in the far field cells are in rad (the
+    angle from the axis in the direction of its azimuth) and ``brightness`` in cd.
+    """
+
+    edges: np.ndarray  # (k + 1,) mm or rad, the same along x and y
+    fraction: np.ndarray  # (k, k) of the emitted flux
+    brightness: np.ndarray  # (k, k) lx or cd
+    in_plane: bool
 
 
 @dataclass(frozen=True)
@@ -82,11 +87,20 @@ class Grids:
         self.beam = _widening(a, 20)
         self.encircled = _widening(a, 100)
         reach = min(2.5 * a, 0.45 * np.pi)
-        if target.distance is None:
-            self.unit, width = "1", np.sin(reach)
-        else:
-            self.unit, width = "mm", target.distance * np.tan(reach)
-        self.spot = np.linspace(-width, width, 162)  # odd number of cells: one lies on the axis
+        self.in_plane = target.distance is not None
+        width = target.distance * np.tan(reach) if self.in_plane else reach
+        self.spot = np.linspace(-width, width, 122)  # odd number of cells: one lies on the axis
+
+    def brightness(self, lumens):
+        """lx in the plane, cd in the far field, from ``lumens`` (k, k) in the cells of the picture."""
+        cell = self.spot[1] - self.spot[0]
+        if self.in_plane:
+            return lumens / (cell * 1e-3) ** 2  # lm/m²
+        middle = 0.5 * (self.spot[1:] + self.spot[:-1])
+        theta = np.hypot(middle[:, None], middle[None, :])
+        # Solid angle of a cell in these coordinates: sin θ / θ times its area; none beyond the horizon.
+        solid = cell**2 * np.sinc(theta / np.pi)
+        return np.where(theta < 0.5 * np.pi, lumens / np.where(solid > 0.0, solid, np.inf), 0.0)
 
 
 def _widening(edge, steps, end=0.5 * np.pi, growth=1.12):
@@ -140,7 +154,7 @@ class Tally:
         cell = np.floor((arrival.place - grid[0]) * ((len(grid) - 1) / (grid[-1] - grid[0])))
         cell = np.clip(cell, -1, len(grid) - 1).astype(np.int64)
         seen = np.all((cell >= 0) & (cell < len(grid) - 1), axis=1)
-        index = cell[seen, 0] * (len(grid) - 1) + cell[seen, 1]
+        index = cell[seen, 1] * (len(grid) - 1) + cell[seen, 0]  # rows along y
         self.spot += np.bincount(index, weight[seen], self.spot.size).reshape(self.spot.shape)
 
 
@@ -166,6 +180,7 @@ def gather(tallies, flux, rays):
     size = {name: sum(t.paths.get(name, 0.0) for t in tallies) for name in everywhere}
     paths, paths_se = book(lambda t: t.paths, sorted(everywhere, key=lambda name: (-size[name], name)))
     inner, inner_se = mean([np.concatenate([[0.0], np.cumsum(t.inner)]) for t in tallies])
+    spot = np.mean([t.spot for t in tallies], axis=0)
     designed, designed_se = mean([t.designed for t in tallies])
     return Landing(
         share=ledger["in target"],
@@ -179,7 +194,7 @@ def gather(tallies, flux, rays):
         encircled=Encircled(grids.encircled, inner, inner_se),
         beam=beam([t.beam for t in tallies]),
         far_field=beam([t.far for t in tallies]),
-        spot=Spot(grids.spot, np.mean([t.spot for t in tallies], axis=0), grids.unit),
+        spot=Spot(grids.spot, spot, grids.brightness(flux * spot), grids.in_plane),
         skewness=(float(min(t.skewness[0] for t in tallies)), float(max(t.skewness[1] for t in tallies))),
         skewness_drift=max(t.drift for t in tallies),
         rays=rays,

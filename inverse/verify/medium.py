@@ -22,7 +22,7 @@ class Arrival:
     """Where forward light lands."""
 
     theta: np.ndarray  # (k,) rad, coordinate of the target
-    place: np.ndarray  # (k, 2) x, y in mm in the plane, or direction cosines in the far field
+    place: np.ndarray  # (k, 2) x, y in mm in the plane; far field: θ cos φ, θ sin φ in rad
     direction: np.ndarray  # (k, 3) unit, in the outer medium
     passed: np.ndarray  # (k,) fraction that gets through the port
     skewness: np.ndarray  # (k,) mm, n (x d_y − y d_x) in the outer medium
@@ -59,7 +59,9 @@ def arrive(surroundings, target, top, origin, direction):
         z = np.full(len(cosine), top + port.gap + port.thickness)
     skewness = outer * (place[:, 0] * out[:, 1] - place[:, 1] * out[:, 0])
     if target.distance is None:
-        theta = np.arctan2(np.hypot(out[:, 0], out[:, 1]), out[:, 2])
-        return Arrival(theta, out[:, :2], out, passed, skewness)
+        sine = np.hypot(out[:, 0], out[:, 1])
+        theta = np.arctan2(sine, out[:, 2])
+        place = out[:, :2] * (theta / np.maximum(sine, np.finfo(float).tiny))[:, None]
+        return Arrival(theta, place, out, passed, skewness)
     place = place + out[:, :2] * ((target.distance - z) / out[:, 2])[:, None]
     return Arrival(np.arctan2(np.hypot(*place.T), target.distance), place, out, passed, skewness)

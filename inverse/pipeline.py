@@ -1,0 +1,156 @@
+"""The order of travel, one line a stage: brief → limit → search → section → verify → files → report."""
+
+from dataclasses import replace
+from pathlib import Path
+
+from inverse import brief as briefs
+from inverse import limit, report, result
+from inverse.export import folder as handover
+from inverse.export import lens_json, step, table
+from inverse.export.atomic import write_text
+from inverse.export.cad import CadMissing
+from inverse.outcome import BriefError, Stop
+from inverse.profile import lens as lenses
+from inverse.profile import moulding
+from inverse.run import Run, read_log
+from inverse.verify import Points, check_limit, compare, fly
+from inverse.verify.trail import trails
+
+ROOM = 1.5  # clear radius over the least one: refined lenses come within 1 % of the limit there (reference k = 1.5)
+UNDATED = "2000-01-01"  # files carry no clock: equal briefs give equal bytes
+
+
+def limits(brief) -> dict:
+    """What no lens can beat, as the ``limit`` block of result.json. Takes a moment, optimises nothing."""
+    return result.limits(brief, brief.envelope, brief.target, _bound(brief, brief.envelope, brief.target))
+
+
+def design(brief, folder, *, watch, resume=False, nearest=False) -> dict:
+    """From a brief to a verified lens and its files in ``folder``. Raises BeyondLimit before any optimisation."""
+    from inverse.refine import merit, search
+    from inverse.trace import farfield
+
+    watch.stage("limits")
+    target = _possible(brief, nearest)
+    box = _sized(brief, target)
+    bound = _bound(brief, box, target)
+    run = Run(folder, brief.digest, resume)
+    write_text(run.folder / "brief.toml", brief.resolved)
+    scene = farfield.scene(brief.emitter, box, brief.index, brief.absorption, brief.surroundings, target)
+    rules = tuple(moulding.limits(box, brief.emitter))
+    problem = merit.Problem(scene, rules, bound.ceiling_with_losses)
+    found = search.find(problem, brief.plan, brief.index, record=run.record, watch=watch, memory=run)
+    section = lenses.section(found.lens, box)
+    tracer = found.score.share(found.lens, brief.plan.seed)
+    context = {
+        "search": [
+            {"family": t.recipe.words, "start_share": t.start, "end_share": t.score, "rounds": t.rounds, "kept": i == 0}
+            for i, t in enumerate(found.trials)
+        ],
+        "screened": found.screened,
+        "stopped": {"reason": found.stop.value, "advice": found.stop.advice},
+        "tracer": {"share": tracer[0], "share_se": tracer[1]},
+    }
+    return _finish(brief, run.folder, box, target, bound, section, context, run.rows, brief.plan.verify_rays, watch)
+
+
+def verify(folder, *, watch, rays=None) -> dict:
+    """Trace a finished run again from its files alone, and write result and report anew."""
+    folder = Path(folder)
+    brief = briefs.read(folder / "brief.toml")
+    try:
+        section, extra = lens_json.read(folder / "lens.json")
+        context = extra["run"]
+        target = _possible(brief, nearest=True)
+        box = replace(brief.envelope, radius=context["radius_mm"])
+        if (folder / "lens.step").is_file():
+            section = _from_solid(folder, section, watch)
+    except (ValueError, KeyError, TypeError) as fault:
+        raise BriefError([f"{folder}: the lens cannot be read back: {fault}"]) from None
+    log = folder / "log.csv"
+    rows = read_log(log) if log.is_file() else []
+    bound = _bound(brief, box, target)
+    return _finish(brief, folder, box, target, bound, section, context, rows, rays or brief.plan.verify_rays, watch)
+
+
+def _finish(brief, folder, box, target, bound, section, context, rows, rays, watch):
+    """From the section to the verdict: verify what was exported, then write every file."""
+    watch.stage("verifying")
+    stamp = result.stamp(brief)
+    table.write_profile(folder / "profile.csv", section, stamp=stamp)
+    points = Points.read(folder / "profile.csv")
+    led, glass = brief.emitter, (brief.index, brief.absorption)
+    landing = fly(points, led, *glass, brief.surroundings, target, rays, brief.plan.seed)
+    tracer = context["tracer"]["share"], context["tracer"]["share_se"]
+    agreement = compare(*tracer, landing)
+    holds = check_limit(landing, bound.ceiling).holds
+    found = {
+        "stamp": stamp,
+        "name": brief.name,
+        "asked": result.asked(brief, box, target),
+        "emitter": result.emitter(brief),
+        "limit": result.limits(brief, box, target, bound),
+        "search": context["search"],
+        "stopped": context["stopped"],
+        "constraints": result.constraints(section, box, led),
+        **result.figures(brief, box, target, bound, landing, tracer, agreement, section),
+    }
+    found["verdict"] = result.verdict(found, Stop(context["stopped"]["reason"]), holds)
+    watch.stage("writing files")
+    files, notes = handover.hand_over(
+        folder,
+        section,
+        name=brief.name,
+        material_name=brief.material.name,
+        density=brief.material.density or None,
+        index=brief.index,
+        wavelength=brief.wavelength,
+        stamp=stamp,
+        far_field=result.far_field(landing.far_field),
+        flux=led.flux,
+        date=UNDATED,
+        aperture_radius=box.radius,
+        run=context | {"radius_mm": box.radius},
+    )
+    for note in notes:
+        watch.note(note)
+    found["files"] = ["brief.toml", "log.csv", *files, "result.json"]
+    found["notes"] = notes
+    drawn = report.write(folder, found, rows, section, trails(points, led, brief.index))
+    found["files"] += drawn
+    Run(folder, brief.digest).write_json("result.json", found)
+    return found
+
+
+def _bound(brief, box, target):
+    return limit.bound(brief.emitter, box.radius, box.height, target, brief.surroundings, brief.index)
+
+
+def _possible(brief, nearest):
+    """The brief's target, or with ``nearest`` the nearest one physics allows. Raises BeyondLimit."""
+    box, target = brief.envelope, brief.target
+    if not nearest:
+        limit.refuse_impossible(brief.emitter, box.radius, box.height, target, brief.surroundings, brief.index)
+        return target
+    possible = _bound(brief, box, target).ceiling_with_losses
+    return target if target.share is None or target.share <= possible else replace(target, share=None)
+
+
+def _sized(brief, target):
+    """The envelope; where the aperture is a maximum and a share is asked, no larger than the share needs."""
+    box = brief.envelope
+    if not brief.aperture_is_maximum or target.share is None:
+        return box
+    least = limit.smallest_radius(
+        brief.emitter, target, brief.surroundings, brief.index, target.share, height=box.height
+    )
+    return replace(box, radius=min(box.radius, ROOM * least))
+
+
+def _from_solid(folder, section, watch):
+    """The section recovered from lens.step, or the one of lens.json when the CAD extra is missing."""
+    try:
+        return step.read_section(folder / "lens.step")
+    except CadMissing as fault:
+        watch.note(f"Verified from lens.json; lens.step was not read. {fault}")
+        return section
