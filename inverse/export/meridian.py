@@ -12,6 +12,7 @@ from inverse.export.cad import items
 from inverse.profile.section import Curve, Section, line
 
 JOIN = 1e-7  # mm
+SQUARE = 1e-6  # rad; 10 nm over 10 mm, well under any mould
 
 
 def section(faces):
@@ -42,9 +43,7 @@ def _curve(face, name, role):
         return _spline(face, surface.FirstVParameter(), surface.LastVParameter(), name, role)
     if surface.GetType() == kind.GeomAbs_Plane:
         plane = surface.Plane()
-        if (
-            abs(plane.Axis().Direction().Z()) < 1.0 - 1e-12
-        ):  # 1e-6 rad: 10 nm over 10 mm, well under any mould
+        if _slant(plane.Axis().Direction()) > SQUARE:
             raise ValueError(f"{name}: a plane that is not square to the z axis")
         tip = plane.Location().Z()
     elif surface.GetType() == kind.GeomAbs_Cone:
@@ -66,10 +65,15 @@ def _curve(face, name, role):
     return line(name, role, *ends)
 
 
+def _slant(direction):
+    """Sine of the angle between a direction of the kernel and the z axis."""
+    return np.hypot(direction.X(), direction.Y())
+
+
 def _on_axis(axis, name):
     """Raises ValueError unless the kernel's axis is the z axis."""
     place, along = axis.Location(), axis.Direction()
-    if np.hypot(place.X(), place.Y()) > JOIN or np.hypot(along.X(), along.Y()) > 1e-6:  # rad, as for planes
+    if np.hypot(place.X(), place.Y()) > JOIN or _slant(along) > SQUARE:
         raise ValueError(f"{name}: turned about another axis than z")
 
 

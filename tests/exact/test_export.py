@@ -81,6 +81,7 @@ def change(whole, path, value):
         (["curves", 3, "degree"], 3, "degree 3 and 7 points need 11 knots"),
         (["curves", 3, "knots", 0], 0.1, "rise from 5 zeros"),
         (["curves", 3, "knots", 5], 0.9, "rise from 5 zeros"),
+        (["curves", 3, "knots", 11], 1.5, "rise from 5 zeros"),
         (["curves", 3, "knots", 5], "x", "finite numbers"),
         (["curves", 3, "points", 2], [1.0], "pairs"),
         (["curves", 3, "points", 2, 0], 10**400, "finite numbers"),
