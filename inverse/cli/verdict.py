@@ -73,8 +73,9 @@ def run(page, result, folder):
     asked, limit, got, light, part = (
         result.get(block) or {} for block in ("asked", "limit", "got", "photometry", "part")
     )
+    reachable = "ceiling_with_losses" if "ceiling_with_losses" in limit else "ceiling"
     rows = [
-        ["share in the target", figure(asked, "share", "%"), figure(limit, "ceiling", "%"),
+        ["share in the target", figure(asked, "share", "%"), figure(limit, reachable, "%"),
          figure(got, "share", "%", "share_se")],
         ["share of the ceiling", DASH, DASH, figure(got, "share_of_ceiling", "%")],
         ["half-angle of the target", figure(asked, "half_angle_deg", "°"),
