@@ -31,7 +31,8 @@ def hand_over(
 
     ``density`` g/mm³ or None, ``index`` at ``wavelength`` µm, ``stamp`` word → value, ``far_field`` a
     `FarField`, ``flux`` lm the LED emits, ``date`` ISO, ``aperture_radius`` mm, ``lamp`` the LED in words,
-    ``watts`` electrical (0 = not stated), ``run`` JSON-ready facts of the search kept in lens.json.  Raises SolidError when the section makes no sound solid, OSError.
+    ``watts`` electrical (0 = not stated), ``run`` JSON-ready facts of the search kept in lens.json.
+    Raises SolidError when the section makes no sound solid, OSError.
     Without the CAD extra, and where the beam does not fit a format, the file is left out with a note.
     """
     folder = Path(folder)
