@@ -71,7 +71,7 @@ def hand_over(
         )
         files.append("lens.step")
     except CadMissing as fault:
-        notes.append(f"lens.step was not written. {fault}")
+        notes.append(_left_out(folder / "lens.step", fault))
     dxf.write(
         folder / "lens.dxf",
         section,
@@ -87,5 +87,11 @@ def hand_over(
             write_text(folder / file, format.text(far_field, plate))
             files.append(file)
         except ValueError as fault:
-            notes.append(f"{file} was not written. {fault}")
+            notes.append(_left_out(folder / file, fault))
     return files, notes
+
+
+def _left_out(path, fault):
+    """The note about a file that was not written; one from an earlier run is not this lens."""
+    old = f" The {path.name} in the folder is from an earlier run." if path.exists() else ""
+    return f"{path.name} was not written. {fault}{old}"

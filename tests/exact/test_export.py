@@ -214,7 +214,20 @@ def test_hand_over_without_cad_notes_it(tmp_path, monkeypatch):
     files, notes = handed_over(tmp_path / "run")
     assert files == ["lens.json", "profile.csv", "lens.dxf", "beam.ies", "beam.ldt"]
     assert sorted(p.name for p in (tmp_path / "run").iterdir()) == sorted(files)
-    assert len(notes) == 1 and "lens.step" in notes[0] and "pip install" in notes[0]
+    assert (
+        len(notes) == 1
+        and "lens.step" in notes[0]
+        and "pip install" in notes[0]
+        and "earlier" not in notes[0]
+    )
+
+
+def test_hand_over_warns_of_an_older_solid(tmp_path, monkeypatch):
+    """A lens.step that was there before, and could not be replaced, is said to be an older one, and kept."""
+    monkeypatch.setitem(sys.modules, "OCP.gp", None)
+    (tmp_path / "lens.step").write_text("older")
+    _, notes = handed_over(tmp_path)
+    assert "from an earlier run" in notes[0] and (tmp_path / "lens.step").read_text() == "older"
 
 
 def test_hand_over_notes_a_beam_that_fits_no_format(tmp_path, monkeypatch):
