@@ -118,25 +118,47 @@ def _candidates(chain, ray, value, slope):
     low, down = value < 0.0, slope < 0.0
     change = low[1:] ^ low[:-1]
     dip = (down[:-1] ^ low[:-1]) & ~(down[1:] ^ low[1:]) & ~change & chain.band[:, None]
-    # Single roots: regula falsi with the slope at the start, i.e. the parabola through both values.
+    # On the axis the slope is zero; what counts is whether it falls towards the next node.
+    dip[0], dip[-1] = low[1] & down[1], low[-2] & ~down[-2]
     node, at = np.nonzero(change)
-    g0, g1, d0 = value[node, at], value[node + 1, at], slope[node, at] * chain.length[node]
+    s = _single(value[node, at], value[node + 1, at], slope[node, at] * chain.length[node])
+    pair, pair_at, early, late = _pairs(chain, ray, value, slope, *np.nonzero(dip))
+    node, at = np.concatenate([node, pair, pair]), np.concatenate([at, pair_at, pair_at])
+    single = np.arange(len(node)) < len(s)
+    return _with_time(chain, ray, at, node, np.concatenate([s, early, late]), single)
+
+
+def _single(g0, g1, d0):
+    """Zero in [0, 1] of the parabola with end values g0, g1 of opposite sign and slope d0 at 0."""
     curvature = g1 - g0 - d0
     root = np.sqrt(np.maximum(d0 * d0 - 4.0 * curvature * g0, 0.0))
     with np.errstate(divide="ignore", invalid="ignore"):
         s = -2.0 * g0 / (d0 + np.where(g0 < g1, root, -root))
-    s = np.where((s >= 0.0) & (s <= 1.0), s, g0 / (g0 - g1))
-    # Pairs: the slope taken linear in between, its zero refined on the curve itself.
-    pair, pair_at = np.nonzero(dip)
-    g0, g1 = value[pair, pair_at], value[pair + 1, pair_at]
-    d0, d1 = slope[pair, pair_at] * chain.length[pair], slope[pair + 1, pair_at] * chain.length[pair]
-    middle, largest, rounding = d0 / (d0 - d1), np.maximum(np.abs(g0), np.abs(g1)), ROUNDING * chain.size**2
+    return np.where((s >= 0.0) & (s <= 1.0), s, g0 / (g0 - g1))
+
+
+def _pairs(chain, ray, value, slope, node, at):
+    """Bands in which G may touch zero: (node, ray, s before the extremum, s behind it)."""
+    g0, g1 = value[node, at], value[node + 1, at]
+    d0, d1 = slope[node, at] * chain.length[node], slope[node + 1, at] * chain.length[node]
+    # Between two nodes the slope is taken linear.  Beside the axis G is a parabola in s² instead:
+    # G = g0 + p s² + q s⁴ away from it, from the values at both ends and the slope at the far one.
+    first, last = node == 0, node == len(chain.band) - 1
+    axis, rise = first | last, np.where(first, d1, -d0)
+    q = np.where(axis, 0.5 * rise - np.where(first, g1 - g0, g0 - g1), -1.0)
+    p = np.where(axis, np.where(first, g1 - g0, g0 - g1) - q, 1.0)
+    out = np.sqrt(np.clip(p / np.where(q < 0.0, -2.0 * q, np.inf), 0.0, 1.0))
+    middle = np.where(axis, np.where(first, out, 1.0 - out), d0 / np.where(axis, 1.0, d0 - d1))
+    largest, rounding = np.maximum(np.abs(g0), np.abs(g1)), ROUNDING * chain.size**2
     keep = np.sign(g0) * (g0 + 0.5 * d0 * middle) < NEAR_ZERO * largest + rounding
-    pair, pair_at, middle, largest = (x[keep] for x in (pair, pair_at, middle, largest))
-    bend = (d1 - d0)[keep]
-    before, tilt_before = np.where(middle < 0.5, 0.0, 1.0), np.where(middle < 0.5, d0[keep], d1[keep])
+    keep = np.where(axis, (p > 0.0) & (q < 0.0), keep)
+    node, at, middle, largest, d0, d1, first, last = (
+        x[keep] for x in (node, at, middle, largest, d0, d1, first, last)
+    )
+    bend, near = d1 - d0, (middle < 0.5) & ~first | last  # secant from the nearer node, never from the axis
+    before, tilt_before = np.where(near, 0.0, 1.0), np.where(near, d0, d1)
     for _ in range(REFINEMENTS):
-        peak, tilt = _along(chain, ray, pair, pair_at, middle)
+        peak, tilt = _along(chain, ray, node, at, middle)
         step = middle - before
         apart = np.abs(step) > 1e-3  # closer together the difference is rounding
         fresh = (tilt - tilt_before) / np.where(apart, step, 1.0)
@@ -145,12 +167,9 @@ def _candidates(chain, ray, value, slope):
         middle = np.clip(middle - tilt / bend, 0.0, 1.0)
     peak = peak - 0.5 * tilt * tilt / bend
     keep = np.sign(bend) * peak < NEARER * largest + rounding
-    pair, pair_at, middle, bend, peak = (x[keep] for x in (pair, pair_at, middle, bend, peak))
-    half = np.sqrt(np.maximum(-2.0 * peak / bend, 0.0)) + 1e-3  # never both from the same point
-    node, at = np.concatenate([node, pair, pair]), np.concatenate([at, pair_at, pair_at])
-    single = np.arange(len(node)) < len(s)
-    s = np.concatenate([s, np.clip(middle - half, 0.0, 1.0), np.clip(middle + half, 0.0, 1.0)])
-    return _with_time(chain, ray, at, node, s, single)
+    node, at, middle, bend, peak = (x[keep] for x in (node, at, middle, bend, peak))
+    half = np.sqrt(np.maximum(-2.0 * peak / bend, 0.0)) + 1e-3  # outside the pair, never both from one point
+    return node, at, np.clip(middle - half, 0.0, 1.0), np.clip(middle + half, 0.0, 1.0)
 
 
 def _along(chain, ray, node, at, s):
