@@ -9,6 +9,7 @@ from inverse.verify.optics import reflectance, reflected, transmitted
 # ((n − 1)/(n + 1))², arcsin(1/n), arctan n, tabled to the digits given.
 TABLE = [
     (1.49253, 0.03905, 42.067, 56.18),
+    (1.58475, 0.05118, 39.125, 57.75),
     (1.5305, 0.04395, 40.797, 56.84),
     (1.51680, 0.04216, 41.245, 56.60),
 ]
