@@ -35,10 +35,9 @@ SHALLOW = 0.05  # |d_z| below which the two crossings of a ring are told apart b
 RESIDUAL = 1e-12
 # A crossing this little behind the start, in body sizes, still counts: the start itself is rounded.
 BEHIND = 1e-11
-# Part of |G| at the nodes by which the extremum may miss zero and still be looked at: as first guessed
-# from the nodes (a band bends by up to TURN), and once refined on the curve.
-NEAR_ZERO, NEARER = 0.5, 1e-3
-REFINEMENTS = 4  # secant steps that find the extremum on the curve
+# Part of the larger |G| at the nodes by which a refined extremum may miss zero and still be tried.
+NEAR_ZERO = 1e-3
+REFINEMENTS = 8  # secant steps that find the extremum on the curve
 ROUNDING = 1e-13  # of G, relative to its largest term
 
 
@@ -150,23 +149,25 @@ def _pairs(chain, ray, value, slope, node, at):
     out = np.sqrt(np.clip(p / np.where(q < 0.0, -2.0 * q, np.inf), 0.0, 1.0))
     middle = np.where(axis, np.where(first, out, 1.0 - out), d0 / np.where(axis, 1.0, d0 - d1))
     largest, rounding = np.maximum(np.abs(g0), np.abs(g1)), ROUNDING * chain.size**2
-    keep = np.sign(g0) * (g0 + 0.5 * d0 * middle) < NEAR_ZERO * largest + rounding
-    keep = np.where(axis, (p > 0.0) & (q < 0.0), keep)
+    keep = ~axis | (p > 0.0) & (q < 0.0)
     node, at, middle, largest, d0, d1, first, last = (
         x[keep] for x in (node, at, middle, largest, d0, d1, first, last)
     )
+    rising = np.where(last, d1 < 0.0, d0 > 0.0) & ~first | first & (d1 < 0.0)  # sign of the slope before
+    early, late = np.zeros_like(middle), np.ones_like(middle)
     bend, near = d1 - d0, (middle < 0.5) & ~first | last  # secant from the nearer node, never from the axis
     before, tilt_before = np.where(near, 0.0, 1.0), np.where(near, d0, d1)
     for _ in range(REFINEMENTS):
         peak, tilt = _along(chain, ray, node, at, middle)
-        step = middle - before
+        step, left = middle - before, (tilt > 0.0) == rising
+        early, late = np.where(left, middle, early), np.where(left, late, middle)
         apart = np.abs(step) > 1e-3  # closer together the difference is rounding
         fresh = (tilt - tilt_before) / np.where(apart, step, 1.0)
         bend = np.where(apart & (fresh * bend > 0.0), fresh, bend)
-        before, tilt_before = middle, tilt
-        middle = np.clip(middle - tilt / bend, 0.0, 1.0)
+        before, tilt_before, middle = middle, tilt, middle - tilt / bend
+        middle = np.where((middle >= early) & (middle <= late), middle, 0.5 * (early + late))
     peak = peak - 0.5 * tilt * tilt / bend
-    keep = np.sign(bend) * peak < NEARER * largest + rounding
+    keep = np.sign(bend) * peak < NEAR_ZERO * largest + rounding
     node, at, middle, bend, peak = (x[keep] for x in (node, at, middle, bend, peak))
     half = np.sqrt(np.maximum(-2.0 * peak / bend, 0.0)) + 1e-3  # outside the pair, never both from one point
     return node, at, np.clip(middle - half, 0.0, 1.0), np.clip(middle + half, 0.0, 1.0)

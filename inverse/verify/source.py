@@ -123,7 +123,7 @@ def swallowed(emitter, origin, direction):
         along = np.sum(origin * direction, 1)
         root = along**2 + emitter.dome.radius**2 - np.sum(origin**2, 1)
         t = -along - np.sqrt(np.maximum(root, 0.0))
-        meets = (root > 0.0) & (along < 0.0) & (t > 0.0) & (origin[:, 2] + t * dz >= 0.0)
+        meets = (root > 0.0) & (t > 0.0) & (origin[:, 2] + t * dz >= 0.0)
         return np.where(meets, t, np.inf)
     falling = (dz < 0.0) & (origin[:, 2] > 0.0)
     t = np.where(falling, -origin[:, 2] / np.where(falling, dz, -1.0), np.inf)

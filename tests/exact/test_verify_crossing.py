@@ -5,10 +5,20 @@ import pytest
 
 from inverse.verify.crossing import first_crossing
 from inverse.verify.surface import Points
-from lens_samples import ball, cylinder
+from lens_samples import cylinder
 
 RADIUS = 5.0
-BALL = Points.of(ball(RADIUS)).chain
+
+
+def sphere(radius, count=400):
+    """Points and tangents of a sphere straight from sine and cosine, their rounding included."""
+    angle = np.linspace(-0.5 * np.pi, 0.5 * np.pi, count)
+    rows = np.column_stack([np.cos(angle), np.sin(angle), -np.sin(angle), np.cos(angle)]) * [radius, radius, 1, 1]
+    rows[[0, -1], 0], rows[[0, -1], 3] = 0.0, -2e-16  # cos π/2 as it may come out, on the unlucky side
+    return Points(("exit face",), (rows,))
+
+
+BALL = sphere(RADIUS).chain
 PLATE = Points.of(cylinder(4.0, 1.0, 3.0)).chain
 
 
@@ -99,6 +109,26 @@ def test_grazing_rays_hit_by_a_hair_and_miss_by_a_hair(depth):
         o = side * RADIUS * (1.0 + sign * depth) - 20.0 * d
         hit = np.isfinite(first_crossing(BALL, o, d, np.zeros(len(d), bool)).t)
         assert np.all(hit == (sign < 0.0))
+
+
+@pytest.mark.parametrize("depth", 10.0 ** np.arange(-1, -8, -1))
+def test_near_horizontal_rays_at_every_height_hit_by_a_hair(depth):
+    """Chords of the circles of latitude, poles included, from far to near grazing and tilted by 0 to 0.1."""
+    rng = np.random.default_rng(9)
+    count = 8000
+    z = RADIUS * (1.0 - 10.0 ** rng.uniform(-6, 0, count)) * rng.choice([-1.0, 1.0], count)
+    turn, tilt = rng.uniform(0, 2 * np.pi, count), rng.choice([0.0, 1e-12, 1e-6, 1e-3, 0.04, 0.1], count)
+    latitude = np.sqrt(RADIUS**2 - z**2)
+    # Closest to the axis at this point, inside by the given part of the circle's radius.
+    near = (latitude * (1.0 - depth))[:, None] * np.column_stack([np.cos(turn), np.sin(turn)])
+    d = np.column_stack([-np.sin(turn), np.cos(turn), tilt * latitude / RADIUS])
+    o, d = rays_at(np.column_stack([near, z]), unit(d), 30.0)
+    b, c = np.sum(o * d, 1), np.sum(o * o, 1) - RADIUS**2
+    sure = b * b - c > 1e-7
+    assert sure.mean() > 0.1
+    found = first_crossing(BALL, o, d, np.zeros(count, bool)).t
+    expected = -b[sure] - np.sqrt(b[sure] ** 2 - c[sure])
+    np.testing.assert_allclose(found[sure], expected, atol=2e-6)  # 1e-9 mm of surface by the slope at grazing
 
 
 def plate_distance(o, d):

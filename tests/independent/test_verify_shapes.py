@@ -96,6 +96,31 @@ def test_a_plane_slab_passes_with_all_its_multiples(index, passes):
     assert out.designed_paths_share == pytest.approx(4 * index**2 * 4 / (1 + index) ** 4, abs=4 * out.share_se)
 
 
+def fresnel_flux(low, high):
+    """∫ R(θ) sin 2θ dθ from the textbook sines and tangents, for a Lambertian point under a plane."""
+    theta = low + (np.arange(50_000) + 0.5) * (high - low) / 50_000
+    inside = np.arcsin(np.sin(theta) / PMMA)
+    rs, rp = (f(theta - inside) / f(theta + inside) for f in (np.sin, np.tan))
+    return np.sum(0.5 * (rs**2 + rp**2) * np.sin(2 * theta)) * (high - low) / 50_000
+
+
+def test_a_black_plate_sorts_the_light_into_known_accounts():
+    """A point 2 mm under an absorbing plate of radius 1: what misses it (cos² of its rim's angle) has left below
+    the foot; what its face mirrors falls at twice the radius, on the board up to the plate's own
+    radius, beside it beyond; the rest is absorbed."""
+    plate = Points.of(cylinder(1.0, 2.0, 3.0))
+    out = fly(plate, POINT, PMMA, 1e3, AIR, Target("spot", 0.01), 4 * RAYS)
+    rim, half = np.arctan(0.5), np.arctan(0.25)
+    home, away = fresnel_flux(0.0, half), fresnel_flux(half, rim)
+    ledger, se = out.ledger, out.ledger_se
+    on_board = ledger["absorbed in the board"] + ledger["absorbed in the emitter"]
+    assert agrees(on_board, se["absorbed in the board"], home, 4 * RAYS)
+    assert agrees(ledger["below the foot"], se["below the foot"], np.cos(rim) ** 2 + away, 4 * RAYS)
+    taken = ledger["absorbed in the material"]
+    assert agrees(taken, se["absorbed in the material"], np.sin(rim) ** 2 - home - away, 4 * RAYS)
+    assert out.paths["under the foot"] == pytest.approx(np.cos(rim) ** 2, abs=2e-4)
+
+
 def test_the_point_source_collimator_collimates():
     """Hyperboloid and flank send all they pass along the axis, here within 2e-6 rad (die: 1e-7/f)."""
     out = fly(Points.of(collimator()), POINT, PMMA, 0.0, AIR, Target("spot", 2e-6), RAYS)
