@@ -2,7 +2,7 @@
 
 Intensity is drawn twice: in candela around the beam, and on a logarithmic scale from the axis to
 90°, where stray light shows.  Encircled flux is the share of the emitted flux inside a half-angle;
-no lens can reach the shaded region above the ceiling.  Bands are ± 2 standard errors.
+the shaded region above the ceiling is out of reach.  Bands are ± 2 standard errors.
 """
 
 import numpy as np
@@ -10,6 +10,7 @@ from matplotlib.ticker import FuncFormatter, PercentFormatter
 
 from inverse.report.canvas import BLUE, FAINT, INK, PALE, RED, SOFT
 from inverse.report.digits import NO_BREAK, decimals, percent, tick
+from inverse.report.wording import best
 
 BAND = 2.0  # standard errors either side
 DECADES = 4.0  # shown of the logarithmic scale
@@ -35,7 +36,8 @@ def draw_beam(figure, beam, asked, photometry):
             ax.axvline(edge, color=RED, linewidth=1.0, dashes=(2, 2))
         ax.set_xlabel("angle from the axis / °")
     reach = min(90.0, AROUND * edge) if edge else _last_light(angle, candela)
-    top = 1.12 * max(candela.max(), np.max(wanted[: np.searchsorted(angle, reach)]) if wanted is not None else 0.0)
+    asked_for = wanted[: np.searchsorted(angle, reach)] if wanted is not None else []
+    top = 1.12 * max(candela.max(), np.max(asked_for, initial=0.0))
     close.set(xlim=(0, reach), ylim=(0, top), ylabel="intensity / cd", title="Around the beam")
     close.yaxis.set_major_formatter(FuncFormatter(tick))
     if edge:
@@ -60,7 +62,7 @@ def _widths(ax, peak, photometry, edge, reach):
         full = photometry.get(key)
         if full and full / 2 < reach:
             ax.plot([0, full / 2], [level * peak] * 2, color=SOFT, linewidth=0.9, marker="|", markersize=5)
-            words = f"{name} {decimals(full, 1)}° ({round(100 * level)} % of peak)"
+            words = f"{name} {decimals(full, 1)}° ({round(100 * level)} %)"
             x = max(edge, full / 2) + 0.025 * reach
             ax.text(x, level * peak, words, color=SOFT, va="center", fontsize=8.5)
 
@@ -77,7 +79,8 @@ def draw_encircled(figure, encircled, asked, got, limit):
         ax.fill_between(angle, ceiling, 2.0, color=PALE, linewidth=0, zorder=0)
         ax.plot(angle, ceiling, color=INK, linewidth=1.2, linestyle=(0, (5, 2)))
         at = 0.72 * reach
-        ax.text(at, np.interp(at, angle, ceiling) + 0.015, "no lens of revolution can pass this line", ha="center", va="bottom")
+        words = "best possible with uncoated surfaces"
+        ax.text(at, np.interp(at, angle, ceiling) + 0.015, words, ha="center", va="bottom")
     ax.fill_between(angle, share - BAND * error, share + BAND * error, color=BLUE, alpha=0.25, linewidth=0)
     ax.plot(angle, share, color=BLUE)
     at = 0.72 * reach
@@ -91,14 +94,17 @@ def draw_encircled(figure, encircled, asked, got, limit):
 def _at_the_edge(ax, edge, asked, got, limit, reach):
     """The target's edge with what is found there, asked there and possible there."""
     ax.axvline(edge, color=RED, linewidth=1.0, dashes=(2, 2))
-    found = [("possible", limit.get("ceiling"), None, INK, "_")]
-    found += [("asked", asked.get("share") or None, None, RED, "_"), ("found", got.get("share"), got.get("share_se"), BLUE, "o")]
     lines = [f"At {decimals(edge, 2)}°, the target's edge"]
-    for word, value, error, colour, marker in found:
+    for word, value, colour, marker, size in (
+        ("possible", best(limit), INK, "_", 13),
+        ("asked", asked.get("share"), RED, "_", 13),
+        ("found", got.get("share"), BLUE, "o", 6),
+    ):
         if value is None:
             continue
-        ax.plot([edge], [value], marker, color=colour, markersize=6 if marker == "o" else 13, markeredgewidth=2, zorder=5)
-        lines.append(f"{word}: {tick(100 * value) + NO_BREAK + '%' if word == 'asked' else percent(value, error)}")
+        ax.plot([edge], [value], marker, color=colour, markersize=size, markeredgewidth=2, zorder=5)
+        shown = percent(value, got.get("share_se") if word == "found" else None)
+        lines.append(f"{word}: {tick(100 * value) + NO_BREAK + '%' if word == 'asked' else shown}")
     box = dict(facecolor="white", edgecolor=FAINT, linewidth=0.6, boxstyle="round,pad=0.5")
     y, va = (0.09, "bottom") if (got.get("share") or 0.0) > 0.5 else (0.91, "top")  # where the curve is not
     ax.text(edge + 0.05 * reach, y, "\n".join(lines), linespacing=1.5, bbox=box, va=va, zorder=6)

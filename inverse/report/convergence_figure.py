@@ -1,8 +1,10 @@
 """How the search went: share and share ÷ ceiling, merit, and what is left of each constraint.
 
-Steps are counted through all stages.  *Slack* is the distance to the nearer bound in the
-constraint's own unit: negative means not met.  The merit is broken between stages because each
-stage may measure it with another edge width.
+Steps are counted through all stages; lines are broken between them, for each stage may be another
+starting shape and may measure the merit with another edge width.  Stages that share the words
+before their first comma ("round 1, start 3: …") are shaded together.  *Slack* is the distance to
+the nearer bound: negative means not met.  Columns of the log without a suffix are in internal
+units, so angles are turned from rad to the degrees of result.json.
 """
 
 import re
@@ -13,6 +15,7 @@ from matplotlib.ticker import FuncFormatter, PercentFormatter
 from inverse.report.canvas import BLUE, GREEN, INK, ORANGE, PALE, PURPLE, RED, SKY, SOFT
 from inverse.report.digits import significant, tick
 from inverse.report.section_figure import spread
+from inverse.units import deg
 
 COLOURS = (BLUE, RED, GREEN, PURPLE, ORANGE, SKY)
 LETTER = 0.012  # width of a letter in widths of the drawing
@@ -28,11 +31,11 @@ def draw_convergence(figure, log_rows, constraints):
     _shares(axes[0], step, log_rows, stages)
     _merit(axes[1], step, log_rows, stages)
     for ax, unit in zip(axes[2:], units):
-        _slacks(ax, step, log_rows, [c for c in constraints if c["unit"] == unit], unit)
+        _slacks(ax, step, log_rows, stages, [c for c in constraints if c["unit"] == unit], unit)
     for ax in axes:
-        for i, (_, first, last) in enumerate(stages):
+        for i, (_, first, last) in enumerate(groups(stages)):
             if i % 2:
-                ax.axvspan(step[first], step[last], color=PALE, linewidth=0, zorder=0)
+                ax.axvspan(step[max(first - 1, 0)], step[last], color=PALE, linewidth=0, zorder=0)
     axes[-1].set_xlabel("step, through all stages")
     axes[-1].set_xlim(step[0], max(step[-1], step[0] + 1) * 1.22)
     axes[-1].xaxis.set_major_formatter(FuncFormatter(tick))
@@ -62,8 +65,20 @@ def timeline(log_rows):
         if stages and stages[-1][0] == str(row.get("stage", "")):
             stages[-1][2] = i
         else:
-            stages.append([str(row.get("stage", "")), max(i - 1, 0), i])
+            stages.append([str(row.get("stage", "")), i, i])
     return np.array(total), [tuple(s) for s in stages]
+
+
+def groups(stages):
+    """[(name, first row, last row)] of neighbouring stages with the same words before their first comma."""
+    made = []
+    for stage, first, last in stages:
+        name = stage.split(",")[0].split(":")[0]
+        if made and made[-1][0] == name:
+            made[-1] = (name, made[-1][1], last)
+        else:
+            made.append((name, first, last))
+    return made
 
 
 def column(log_rows, name):
@@ -78,11 +93,13 @@ def _number(cell):
 def slack(log_rows, constraint):
     """Distance (k,) to the nearer bound over the log, or None when the log has no such column."""
     plain = _plain(constraint["name"])
-    names = {plain, f"{plain}_{_plain(constraint['unit'])}"}
-    key = next((k for k in log_rows[0] if _plain(k) in names), None)
+    unit = _plain(constraint["unit"])
+    key = next((k for k in log_rows[0] if _plain(k) in (plain, f"{plain}_{unit}")), None)
     if key is None:
         return None
     measured = column(log_rows, key)
+    if unit == "deg" and _plain(key) == plain:
+        measured = deg(measured)
     below = measured - constraint["lower"] if constraint.get("lower") is not None else np.inf
     above = constraint["upper"] - measured if constraint.get("upper") is not None else np.inf
     return np.minimum(below, above)
@@ -94,31 +111,38 @@ def _plain(name):
 
 def _shares(ax, step, log_rows, stages):
     ends = []
-    for name, words, colour in (("share_over_ceiling", "share ÷ ceiling", INK), ("share", "share in target", BLUE)):
+    lines = ("share_over_ceiling", "share ÷ ceiling", INK), ("share", "share in target", BLUE)
+    for name, words, colour in lines:
         values = column(log_rows, name)
         if np.isfinite(values).any():
-            ax.plot(step, values, color=colour)
+            _pieces(ax, step, values, stages, color=colour)
             ends.append((values[np.isfinite(values)][-1], words, colour))
     _end_labels(ax, step, ends)
     ax.yaxis.set_major_formatter(PercentFormatter(1.0, decimals=0, symbol="\u00a0%"))
-    for name, first, last in stages:
-        if step[last] - step[first] > (0.01 + LETTER * len(name)) * (step[-1] - step[0]):
-            ax.text((step[first] + step[last]) / 2, 1.02, name, transform=ax.get_xaxis_transform(),
+    for name, first, last in groups(stages):
+        start = step[max(first - 1, 0)]
+        if step[last] - start > (0.01 + LETTER * len(name)) * (step[-1] - step[0]):
+            ax.text((start + step[last]) / 2, 1.02, name, transform=ax.get_xaxis_transform(),
                     ha="center", va="bottom", color=SOFT)  # fmt: skip
 
 
 def _merit(ax, step, log_rows, stages):
     merit = column(log_rows, "merit")
-    for i, (_, first, last) in enumerate(stages):
-        here = slice(first + (i > 0), last + 1)
-        ax.plot(step[here], merit[here], color=INK)
+    _pieces(ax, step, merit, stages, color=INK)
     finite = merit[np.isfinite(merit)]
     if len(finite) and finite.min() > 0 and finite.max() > 20 * finite.min():
         ax.set_yscale("log")
     ax.set_title("Merit (what the search lowers)")
 
 
-def _slacks(ax, step, log_rows, constraints, unit):
+def _pieces(ax, step, values, stages, **style):
+    """One line a stage; a stage of a single row is a dot."""
+    for _, first, last in stages:
+        here = slice(first, last + 1)
+        ax.plot(step[here], values[here], marker="." if first == last else "", **style)
+
+
+def _slacks(ax, step, log_rows, stages, constraints, unit):
     found = [(c["name"], slack(log_rows, c)) for c in constraints]
     found = [(n, s) for n, s in found if s is not None and np.isfinite(s).any()]
     found.sort(key=lambda pair: pair[1][np.isfinite(pair[1])][-1])
@@ -126,7 +150,7 @@ def _slacks(ax, step, log_rows, constraints, unit):
     near = min(1.1 * near, NEAR.get(unit, np.inf)) or 1.0
     ends = []
     for (name, values), colour in zip(found[:SHOWN], COLOURS):
-        ax.plot(step, values, color=colour, linewidth=1.3)
+        _pieces(ax, step, values, stages, color=colour, linewidth=1.3)
         last = values[np.isfinite(values)][-1]
         ends.append((last, name if last < near else f"{name}: {significant(last, 2)} ↑", colour))
     low = min(min(np.nanmin(s) for _, s in found[:SHOWN]), 0.0)
@@ -147,5 +171,6 @@ def _end_labels(ax, step, ends):
     heights = spread([min(max(e[0], low), high) for e in ends], gap, low, high)
     for (_, words, colour), y in zip(ends, heights):
         box = dict(facecolor="white", edgecolor="none", pad=0.8)
-        ax.annotate(words, (step[-1], y), (6, 0), textcoords="offset points", color=colour, va="center", bbox=box)
+        at = dict(xytext=(6, 0), textcoords="offset points", va="center")
+        ax.annotate(words, (step[-1], y), color=colour, bbox=box, **at)
     ax.set_ylim(low, high)

@@ -9,6 +9,7 @@ minus signs, and a unit follows after a no-break space (the degree sign follows 
 
 import math
 
+FINEST = 5e-6  # of the emitted flux; far below what any photometer resolves
 NARROW, NO_BREAK, MINUS = "\u202f", "\u00a0", "\u2212"
 
 
@@ -47,7 +48,8 @@ def error_places(error):
 
 
 def percent(fraction, error=None, digits=3):
-    """A fraction as percent: ``"84.32 ± 0.04 %"``."""
+    """A fraction as percent: ``"84.32 ± 0.04 %"``; an error below 0.0005 % is not worth its digits."""
+    error = None if error is not None and error < FINEST else error
     return with_error(100 * fraction, None if error is None else 100 * error, digits) + NO_BREAK + "%"
 
 

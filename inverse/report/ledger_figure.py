@@ -5,7 +5,7 @@ from inverse.report.digits import percent
 
 COLOURS = {
     "target": GREEN, "outside": SKY, "back": ORANGE, "foot": RED,
-    "board": PURPLE, "material": YELLOW, "bouncing": SOFT, "other": FAINT,
+    "board": PURPLE, "material": YELLOW, "emitter": BLUE, "port": "#999933", "bouncing": SOFT, "other": FAINT,
 }  # fmt: skip
 ROOM = 0.075  # share of the bar a piece needs before its percentage fits inside
 DARK = (GREEN, RED, SOFT, BLUE)  # pieces that want white letters

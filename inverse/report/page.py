@@ -12,10 +12,10 @@ from pathlib import Path
 from jinja2 import Environment, FileSystemLoader, StrictUndefined
 from markupsafe import Markup, escape
 
-from inverse.report import tables, wording
+from inverse.report import labels, tables, wording
 from inverse.report.beam_figure import draw_beam, draw_encircled
 from inverse.report.canvas import WIDTH, picture
-from inverse.report.convergence_figure import convergence_height, draw_convergence, timeline
+from inverse.report.convergence_figure import convergence_height, draw_convergence, groups, timeline
 from inverse.report.digits import percent
 from inverse.report.ledger_figure import COLOURS, draw_ledger
 from inverse.report.section_figure import draw_section, picture_size
@@ -28,7 +28,8 @@ def write(folder, result, log_rows, section, rays):
     """Write report.html and the PNGs into ``folder``; returns the names of the files written.
 
     ``result``: the structure of result.json, plus optional "emitter" {reach_mm, dome_radius_mm,
-    above_board_mm} and "spot" {grid, extent_mm or extent_deg, distance_mm, peak_lx?}.
+    above_board_mm, flux_lm}, "spot" {grid, extent_mm or extent_deg, distance_mm, peak_lx or peak_cd}
+    and "notes" [sentences].
     ``log_rows``: the rows of log.csv.  ``section``: the Section, or None.  ``rays``: {"centre",
     "edge"} lists of polylines (k, 2), r signed and z, mm.  Raises OSError when the folder cannot
     be written.
@@ -56,7 +57,8 @@ def pictures(result, log_rows, section, rays):
         wanted["beam"] = (WIDTH, 3.9), lambda f: draw_beam(f, result["beam"], asked, photometry)
     if (result.get("encircled") or {}).get("share"):
         got, limit = result.get("got") or {}, result.get("limit") or {}
-        wanted["encircled"] = (WIDTH, 3.9), lambda f: draw_encircled(f, result["encircled"], asked, got, limit)
+        curve = result["encircled"]
+        wanted["encircled"] = (WIDTH, 3.9), lambda f: draw_encircled(f, curve, asked, got, limit)
     if result.get("spot"):
         wanted["spot"] = (WIDTH, 4.5), lambda f: draw_spot(f, result["spot"], asked, photometry)
     if len(log_rows) > 1:
@@ -72,16 +74,22 @@ def pictures(result, log_rows, section, rays):
 def render(result, log_rows, figures, section, written):
     """The page as text. ``figures`` {name: Markup}; ``written`` names of the pictures beside it."""
     environment = Environment(
-        loader=FileSystemLoader(HERE), autoescape=True, undefined=StrictUndefined, trim_blocks=True, lstrip_blocks=True
+        loader=FileSystemLoader(HERE),
+        autoescape=True,
+        undefined=StrictUndefined,
+        trim_blocks=True,
+        lstrip_blocks=True,
     )
     environment.filters["commands"] = commands
     accounts, total = tables.ledger(result)
-    stages = [name for name, _, _ in timeline(log_rows)[1]] if log_rows else []
+    stages = timeline(log_rows)[1] if log_rows else []
+    starts, more_starts = tables.search(result)
     tone, word = wording.outcome(result)
     return environment.get_template("page.html").render(
         style=Markup((HERE / "page.css").read_text(encoding="utf-8")),
         name=result.get("name") or "Lens",
         no_solid="lens.json" in (result.get("files") or ()) and "lens.step" not in result["files"],
+        notes=result.get("notes") or [],
         tone=tone,
         word=word,
         headline=wording.headline(result),
@@ -97,15 +105,18 @@ def render(result, log_rows, figures, section, written):
         paths=tables.paths(result),
         designed=_designed(result),
         constraints=tables.constraints(result),
-        photometry=tables.rows(result, "photometry", tables.PHOTOMETRY),
-        part=tables.rows(result, "part", tables.PART),
-        limit=tables.rows(result, "limit", tables.LIMIT),
-        stages=list(dict.fromkeys(s for s in stages if s)),
+        spots=tables.spots(result),
+        photometry=tables.rows(result, "photometry", labels.PHOTOMETRY),
+        part=tables.rows(result, "part", labels.PART),
+        limit=tables.rows(result, "limit", labels.LIMIT),
+        stages=[name for name, _, _ in groups(stages) if name],
+        pieces=len(stages),
         stopped=result.get("stopped") or {},
-        search=tables.search(result),
+        search=starts,
+        more_starts=more_starts,
         blue_light=tables.rows(result, "blue_light"),
         material=(result.get("part") or {}).get("material"),
-        stamp=tables.rows(result, "stamp", tables.STAMP),
+        stamp=tables.rows(result, "stamp", labels.STAMP),
         version=(result.get("stamp") or {}).get("version"),
         files=tables.files([*(result.get("files") or ()), "report.html", *written]),
     )

@@ -83,9 +83,8 @@ def _led(ax, section, rays, emitter, left, right):
     starts = [abs(p[0][0]) for p in rays.get("edge", ())]
     reach = emitter.get("reach_mm") or max(starts, default=0.0)
     thickness = 0.05 * (points[:, 1].max() - foot)
-    ax.add_patch(
-        Rectangle((0.62 * left, board - thickness), 0.62 * (right - left), thickness, facecolor="#c9d0d6", zorder=1)
-    )
+    corner, width = (0.62 * left, board - thickness), 0.62 * (right - left)
+    ax.add_patch(Rectangle(corner, width, thickness, facecolor="#c9d0d6", zorder=1))
     named = [("board", (0.5 * right, board - thickness / 2))]
     if reach <= 0:
         return named

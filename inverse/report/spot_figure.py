@@ -15,6 +15,7 @@ from mpl_toolkits.axes_grid1.anchored_artists import AnchoredSizeBar
 
 from inverse.report.canvas import SKY
 from inverse.report.digits import significant, tick
+from inverse.report.grain import without_grain
 
 STOPS = 4
 
@@ -26,22 +27,26 @@ def grey(relative):
 
 
 def draw_spot(figure, spot, asked, photometry):
-    """Fill ``figure`` from ``spot``: {"grid" (k, k), "extent_mm" or "extent_deg" half width, "distance_mm"}."""
-    grid = np.array(spot["grid"], float)
+    """Fill ``figure`` from ``spot`` {grid (k, k), extent_mm or extent_deg, distance_mm, peak_lx?, peak_cd?}.
+
+    The extent is the half width of the picture.
+    """
+    raw = np.array(spot["grid"], float)
+    grid = without_grain(raw)
     half, unit = (spot["extent_mm"], "mm") if spot.get("extent_mm") else (spot["extent_deg"], "°")
     edge = _edge(spot, asked, unit)
     first, second = figure.subplots(1, 2, sharey=True)
-    peak = _peak_lux(spot, photometry)
+    peak = _peak_lux(spot, photometry, grid.max() / raw.max())
     for ax, stops in ((first, 0), (second, STOPS)):
         image = grey(grid / grid.max() * 2.0**stops)
-        ax.imshow(
-            image, cmap="gray", vmin=0, vmax=1, extent=(-half, half, -half, half), origin="lower", interpolation="bilinear"
-        )
+        extent = (-half, half, -half, half)
+        ax.imshow(image, "gray", vmin=0, vmax=1, extent=extent, origin="lower", interpolation="bilinear")
         ax.grid(False)
         ax.set_xlabel(f"across the wall / {unit}" if unit == "mm" else "angle from the axis / °")
         white = "white = peak" if stops == 0 else f"white = peak ÷ {2**stops}"
         white += f" = {significant(peak[0] / 2**stops)} lx {peak[1]}" if peak else ""
-        ax.set_title(("Exposed for the peak" if stops == 0 else f"Exposed {2**stops} times longer") + "\n" + white)
+        exposure = "Exposed for the peak" if stops == 0 else f"Exposed {2**stops} times longer"
+        ax.set_title(exposure + "\n" + white)
         if edge:
             t = np.linspace(0, 2 * np.pi, 181)
             ax.plot(edge * np.cos(t), edge * np.sin(t), color=SKY, linewidth=1.0, dashes=(3, 3))
@@ -58,13 +63,18 @@ def _edge(spot, asked, unit):
     return distance * np.tan(np.radians(angle)) if distance else None
 
 
-def _peak_lux(spot, photometry):
-    """(lux at the brightest point, where), or None: I / d², for a far-field picture at one metre."""
+def _peak_lux(spot, photometry, part):
+    """(lux at the brightest point, where), or None: I / d², for a far-field picture at one metre.
+
+    ``part``: peak of the picture shown over that of the grid, whose peak may be grain.
+    """
     if spot.get("peak_lx"):
-        return spot["peak_lx"], "on this wall"
-    if spot.get("extent_deg") and photometry.get("peak_cd"):
-        return photometry["peak_cd"], "at 1 m"  # lx = cd / m²
-    return None
+        return part * spot["peak_lx"], "on this wall"
+    if not spot.get("extent_deg"):
+        return None
+    if spot.get("peak_cd"):
+        return part * spot["peak_cd"], "at 1 m"  # lx = cd / m²
+    return (photometry["peak_cd"], "at 1 m") if photometry.get("peak_cd") else None
 
 
 def _scale_bar(ax, spot, half, unit):
@@ -74,7 +84,7 @@ def _scale_bar(ax, spot, half, unit):
     decade = 10.0 ** np.floor(np.log10(wanted))
     length = max(s * decade for s in (1, 2, 5) if s * decade <= wanted)
     words = f"{tick(length)} mm" + ("" if unit == "mm" else " at 1 m")
-    bar = AnchoredSizeBar(ax.transData, length / per_unit, words, "lower right", color="white", pad=0.5, sep=4,
-                          size_vertical=0.012 * half, label_top=True)  # fmt: skip
+    style = dict(color="white", pad=0.5, sep=4, size_vertical=0.012 * half, label_top=True)
+    bar = AnchoredSizeBar(ax.transData, length / per_unit, words, "lower right", **style)
     bar.patch.set(facecolor="black", edgecolor="none", alpha=0.55)
     ax.add_artist(bar)

@@ -6,92 +6,40 @@ the unit their suffix tells; ``x_se`` is the standard error of ``x`` and never a
 """
 
 from inverse.report.digits import NO_BREAK, decimals, percent, quantity, signed, significant, tick, with_error
-from inverse.report.wording import ordered
+from inverse.report.labels import FILES, READERS, UNITS, plain, unit_of
+from inverse.report.wording import best, ordered, part_of_best
+from inverse.verify.ledger import DESIGNED
 
-SUFFIXES = (  # longest first, so that _cd_per_lm is not read as _lm
-    ("_cd_per_lm", "cd/lm"), ("_mm2sr", "mm²·sr"), ("_w_m2_sr", "W/(m²·sr)"), ("_mm3", "mm³"), ("_deg", "°"),
-    ("_mm", "mm"), ("_um", "µm"), ("_lm", "lm"), ("_cd", "cd"), ("_lx", "lx"), ("_g", "g"), ("_m", "m"),
-    ("_s", "s"), ("_share", "%"), ("share", "%"), ("efficiency", "%"), ("_ceiling", "%"), ("transmittance", "%"),
-)  # fmt: skip
-UNITS = {"deg": "°", "1": "", "": "", None: ""}
-PHOTOMETRY = {
-    "flux_lm": "Flux",
-    "efficiency": "Optical efficiency",
-    "peak_cd": "Peak intensity",
-    "peak_cd_per_lm": "Peak intensity a lumen",
-    "beam_angle_deg": "Beam angle, full, at 50 % of peak",
-    "field_angle_deg": "Field angle, full, at 10 % of peak",
-    "beam_distance_m": "Beam distance to 0.25 lx",
-}
-PART = {
-    "material": "Material",
-    "index": "Refractive index",
-    "diameter_mm": "Diameter over all",
-    "height_mm": "Height over all",
-    "thickest_mm": "Thickest place",
-    "volume_mm3": "Volume",
-    "mass_g": "Mass",
-}
-LIMIT = {
-    "ceiling": ("Largest share any lens of revolution can deliver", "%"),
-    "etendue_ratio": ("Étendue, target ÷ source", "1"),
-    "skewness_ceiling": ("Ceiling from skewness, before losses", "%"),
-    "brightness_ceiling": ("Ceiling from brightness, before losses", "%"),
-    "transmission": ("Transmission of two uncoated surfaces", "%"),
-    "smallest_aperture_mm": ("Smallest aperture for this beam", "mm"),
-    "narrowest_half_angle_deg": ("Narrowest half-angle from this aperture", "°"),
-    "largest_candela": ("Largest intensity on the axis", "cd"),
-    "source_etendue_mm2sr": ("Étendue of the source", "mm²·sr"),
-    "target_etendue_mm2sr": ("Étendue of the target", "mm²·sr"),
-}
-STAMP = {
-    "version": "Version of inverse",
-    "brief_sha256": "SHA-256 of the brief",
-    "seed": "Random seed",
-    "precision": "Precision",
-    "jax": "JAX",
-    "numpy": "NumPy",
-}
-FILES = {  # name or suffix -> what it is for, whom it is for
-    "brief.toml": ("the brief as resolved, with every default: run it again to get this lens", "everyone"),
-    "lens.step": ("the solid, in mm, emitter at the origin, light towards +z", "CAD colleague"),
-    "lens.dxf": ("the section as a dimensioned drawing with exact curves", "moulder"),
-    "lens.json": ("the exact curves: degree, knots, control points", "CAD colleague"),
-    "profile.csv": ("points and slopes along every curve, for toolmaking and measuring", "moulder"),
-    "beam.ies": ("the beam as LM-63 photometric file", "lighting colleague"),
-    "beam.ldt": ("the beam as EULUMDAT photometric file", "lighting colleague"),
-    "result.json": ("every figure of this page, with its standard error where it has one", "scripts"),
-    "log.csv": ("the search step by step", "scripts"),
-    "report.html": ("this page", "everyone"),
-    "section.png": ("picture: lens, LED and rays", "slides and data sheets"),
-    "beam.png": ("picture: intensity over angle", "slides and data sheets"),
-    "encircled.png": ("picture: encircled flux and its limit", "slides and data sheets"),
-    "spot.png": ("picture: the spot on a wall", "slides and data sheets"),
-    "convergence.png": ("picture: the search", "slides and data sheets"),
-    ".tm25ray": ("rays of the beam in IES TM-25 form", "lighting colleague"),
-    ".stl": ("the solid as triangles, for a look or a print, not for a mould", "CAD colleague"),
-    ".png": ("picture", "slides and data sheets"),
-    ".csv": ("table", "scripts"),
-    ".json": ("data", "scripts"),
-}
+DOUBT = 2.0  # standard errors by which a share may fall short and still count as met, as in the verdict
 PATHS = 12  # told one by one
+FAINTEST = 1e-4  # of the emitted flux; weaker paths are only summed
+STARTS = 10  # told one by one
 LUMEN_PLACES = 1
-READERS = ("CAD colleague", "moulder", "lighting colleague", "everyone", "scripts", "slides and data sheets")
 
 
 def rows(result, section, names=None):
     """Rows of ``result[section]``: the known keys in their order, then whatever else holds a plain value."""
     values, names = result.get(section) or {}, names or {}
-    keys = [k for k in names if k in values] + [k for k in values if k not in names and not k.endswith("_se")]
+    keys = [k for k in names if k in values] + [k for k in values if k not in names and not _is_error(k)]
     made = []
     for key in keys:
         value, known = values[key], names.get(key)
         if value is None or isinstance(value, (dict, list)):
             continue
         name, unit = known if isinstance(known, tuple) else (known or plain(key), unit_of(key))
-        text = value if isinstance(value, str) else _text(key, value, unit, values.get(key + "_se"))
+        text = value if isinstance(value, str) else _text(key, value, unit, _error(values, key))
         made.append({"key": f"{section}.{key}", "name": name, "text": text})
     return made
+
+
+def _is_error(key):
+    return key.endswith("_se") or "_se_" in key
+
+
+def _error(values, key):
+    """The standard error that belongs to ``key``: ``x_lm_se`` or ``x_se_lm`` for ``x_lm``."""
+    stem, _, unit = key.rpartition("_")
+    return values.get(key + "_se", values.get(f"{stem}_se_{unit}"))
 
 
 def _text(key, value, unit, error):
@@ -104,44 +52,36 @@ def _text(key, value, unit, error):
     return quantity(value, unit, error, 5 if key == "index" else 3)
 
 
-def unit_of(key):
-    return next((unit for suffix, unit in SUFFIXES if key.endswith(suffix)), "")
-
-
-def plain(key):
-    """A key as words: ``cooling_time_s`` becomes "Cooling time"."""
-    for suffix, _ in SUFFIXES:
-        if suffix.startswith("_") and suffix not in ("_share", "_ceiling") and key.endswith(suffix):
-            key = key[: -len(suffix)]
-            break
-    words = key.replace("_", " ").strip()
-    return words[:1].upper() + words[1:]
-
-
 def verdict(result):
     """Rows {name, key, found, wanted, mark}: mark is True (met), False (missed) or None (for information)."""
     wanted, got, limit = result.get("asked", {}), result.get("got", {}), result.get("limit", {})
     made = []
     if got.get("share") is not None:
-        share, asked = got["share"], wanted.get("share")
-        made.append(_judged("Light inside the target", "got.share", percent(share, got.get("share_se")),
+        share, error, asked = got["share"], got.get("share_se") or 0.0, wanted.get("share")
+        made.append(_judged("Light inside the target", "got.share", percent(share, error),
                             f"at least {tick(100 * asked)}{NO_BREAK}%" if asked else "as much as possible",
-                            share >= asked if asked else None))  # fmt: skip
-    if limit.get("ceiling") is not None:
-        made.append(_judged("Most that physics allows", "limit.ceiling", percent(limit["ceiling"]), "", None))
-    if got.get("share_of_ceiling") is not None:
-        made.append(_judged("Share of the limit", "got.share_of_ceiling", percent(got["share_of_ceiling"]), "", None))
+                            share >= asked - DOUBT * error if asked else None))  # fmt: skip
+    if best(limit) is not None:
+        made.append(_judged("Best that physics allows", "verdict.best", percent(best(limit)), "", None))
+    key, part = part_of_best(result)
+    if key:
+        made.append(_judged("Share of that best", key, percent(part), "", None))
+    if got.get("shape_deviation") is not None:
+        made.append(_judged("Deviation from the wanted beam, rms, of its peak", "got.shape_deviation",
+                            percent(got["shape_deviation"]), "", None))  # fmt: skip
     peak = (result.get("photometry") or {}).get("peak_cd")
     if peak is not None:
         made.append(_judged("Peak intensity", "photometry.peak_cd", _peak(result["photometry"]), "", None))
     constraints = result.get("constraints") or []
     if constraints:
         met = sum(bool(c["met"]) for c in constraints)
-        made.append(_judged("Constraints met", "constraints", f"{met} of {len(constraints)}", "all", met == len(constraints)))
+        count = f"{met} of {len(constraints)}"
+        made.append(_judged("Constraints met", "constraints", count, "all", met == len(constraints)))
     agreement = result.get("agreement") or {}
     if agreement.get("difference") is not None:
-        made.append(_judged("Two independent ray traces differ by", "agreement.difference", _difference(agreement),
-                            "nothing beyond chance", agreement.get("agrees"), ("agree", "disagree")))  # fmt: skip
+        name, found = "Two independent ray traces differ by", _difference(agreement)
+        made.append(_judged(name, "agreement.difference", found, "nothing beyond chance",
+                            agreement.get("agrees"), ("agree", "disagree")))  # fmt: skip
     return made
 
 
@@ -154,13 +94,11 @@ def _peak(photometry):
 
 
 def _difference(agreement):
-    text = with_error(100 * agreement["difference"], _scaled(agreement.get("sigma"), 100)) + NO_BREAK + "points"
+    sigma = agreement.get("sigma")
+    points = with_error(100 * agreement["difference"], None if sigma is None else 100 * sigma)
+    text = points + NO_BREAK + "points"
     deviations = agreement.get("deviations")
     return text if deviations is None else f"{text} ({decimals(abs(deviations), 1)}{NO_BREAK}σ)"
-
-
-def _scaled(value, factor):
-    return None if value is None else factor * value
 
 
 def ledger(result):
@@ -178,16 +116,21 @@ def ledger(result):
 
 
 def paths(result):
-    """Rows {key, name, text} of the ways the light took, strongest first, the weak ones summed."""
+    """Rows {key, name, text, designed} of the ways the light took, strongest first, the weak ones summed.
+
+    ``designed`` is None for the sum, which may hold both kinds.
+    """
     found = sorted((result.get("paths") or {}).items(), key=lambda pair: -pair[1])
+    told = [pair for pair in found[:PATHS] if pair[1] >= FAINTEST]
     made = [
-        {"key": f"paths.{name}", "name": name.replace("_", " ").replace(">", "→"), "text": percent(fraction)}
-        for name, fraction in found[:PATHS]
+        {"key": f"paths.{name}", "name": name, "text": percent(fraction), "designed": name in DESIGNED}
+        for name, fraction in told
     ]
-    rest = found[PATHS:]
+    rest = found[len(told) :]
     if rest:
         total = percent(sum(fraction for _, fraction in rest))
-        made.append({"key": "paths", "name": f"{len(rest)} weaker paths together", "text": total})
+        name = "1 weaker path" if len(rest) == 1 else f"{len(rest)} weaker paths together"
+        made.append({"key": "paths", "name": name, "text": total, "designed": None})
     return made
 
 
@@ -199,7 +142,8 @@ def constraints(result):
         show = _fixed(unit)
         bounds = [s + show(c[k]) for k, s in (("lower", "≥ "), ("upper", "≤ ")) if c.get(k) is not None]
         made.append({
-            "key": f"constraints.{c['name']}", "name": c["name"], "met": bool(c["met"]), "active": bool(c.get("active")),
+            "key": f"constraints.{c['name']}", "name": c["name"],
+            "met": bool(c["met"]), "active": bool(c.get("active")),
             "measured": _with_unit(show(c["measured"]), unit),
             "bound": _with_unit(" and ".join(bounds), unit) if bounds else "none",
             "slack": "" if c.get("slack") is None else _with_unit(signed(show(c["slack"])), unit),
@@ -229,7 +173,8 @@ def place(where):
 
 
 def search(result):
-    """Rows {family, start, end, kept} of the starts that were tried."""
+    """(rows {family, start, end, kept} of the starts that were refined, how many more there were)."""
+    starts = result.get("search") or []
     return [
         {
             "family": str(s.get("family", "")),
@@ -237,12 +182,29 @@ def search(result):
             "end": _share(s.get("end_share")),
             "kept": bool(s.get("kept")),
         }
-        for s in result.get("search") or []
-    ]
+        for s in starts[:STARTS]
+    ], max(len(starts) - STARTS, 0)
 
 
 def _share(value):
     return "" if value is None else percent(value)
+
+
+def spots(result):
+    """Rows {distance, illuminance, half, nine_tenths} of what the beam does on a wall."""
+    return [
+        {
+            "distance": tick(s["distance_m"]) + NO_BREAK + "m",
+            "illuminance": quantity(s["illuminance_lx"], "lx"),
+            "half": _diameter(s.get("diameter_half_flux_mm")),
+            "nine_tenths": _diameter(s.get("diameter_nine_tenths_flux_mm")),
+        }
+        for s in (result.get("photometry") or {}).get("spots") or []
+    ]
+
+
+def _diameter(value):
+    return "not inside 90°" if value is None else quantity(value, "mm")
 
 
 def files(names):

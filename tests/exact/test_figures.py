@@ -15,7 +15,8 @@ from inverse.profile.section import MECHANICAL, REFLECTING, REFRACTING, Section,
 from inverse.report import digits
 from inverse.report.beam_figure import draw_beam, draw_encircled
 from inverse.report.canvas import inline, picture
-from inverse.report.convergence_figure import column, draw_convergence, slack, timeline
+from inverse.report.convergence_figure import column, draw_convergence, groups, slack, timeline
+from inverse.report.grain import without_grain
 from inverse.report.ledger_figure import draw_ledger
 from inverse.report.section_figure import picture_size, spread
 from inverse.report.spot_figure import draw_spot, grey
@@ -60,11 +61,17 @@ def test_a_value_is_rounded_to_its_error(value, error, shown):
 
 @pytest.mark.parametrize(
     ("value", "shown"),
-    [(9.996, "10.0"), (0.0, "0"), (99.96, "100"), (1234.5, "1230"), (123456.0, "123 000"), (2.5e-7, "2.50 × 10⁻⁷")],
+    [(9.996, "10.0"), (0.0, "0"), (99.96, "100"), (123456.0, "123 000"), (2e-7, "2.00 × 10⁻⁷")],
 )
 def test_three_significant_digits_survive_a_carry(value, shown):
     """Rounding up into the next power of ten adds no digit; worked by hand."""
     assert digits.significant(value).replace("\u202f", " ") == shown
+
+
+def test_an_error_too_small_to_matter_is_not_printed():
+    """0.86165 ± 0.00016 % is shown as 0.862 %: nobody measures the fifth digit of a loss."""
+    assert digits.percent(0.0086165, 1.6e-6) == "0.862\u00a0%"
+    assert "±" in digits.percent(0.0086165, 1.6e-5)
 
 
 def test_nothing_is_printed_as_minus_zero():
@@ -98,8 +105,8 @@ def test_names_keep_their_distance():
 
 def test_the_lens_is_drawn_full_and_mirrored():
     """The filled outline of a 5 × 6 mm half section with a 2 × 3 mm pocket has twice (30 - 6) mm²."""
-    outline = max((p for p in drawn().patches if isinstance(p, Polygon)), key=lambda p: len(p.get_xy())).get_xy()
-    r, z = outline.T
+    polygons = [p.get_xy() for p in drawn().patches if isinstance(p, Polygon)]
+    r, z = max(polygons, key=len).T
     area = 0.5 * abs(np.sum(r * np.roll(z, 1) - z * np.roll(r, 1)))
     assert area == pytest.approx(2 * (5 * 6 - 2 * 3), rel=1e-12)
     assert r.min() == pytest.approx(-r.max())
@@ -112,7 +119,8 @@ def test_both_axes_of_the_section_have_one_scale():
     width, height = picture_size(block())
     left, right = ax.get_xlim()
     low, high = ax.get_ylim()
-    assert (height - 0.55) / width == pytest.approx((high - low) / (right - left))  # 0.55 in for the scale below
+    below = 0.55  # inch, for the scale
+    assert (height - below) / width == pytest.approx((high - low) / (right - left))
 
 
 def test_every_curve_is_named_once():
@@ -128,7 +136,8 @@ def test_labels_can_be_left_out():
 
 def test_the_die_is_as_wide_as_the_led():
     """The die lies in the emitter plane from -reach to reach; without a reach it follows the edge rays."""
-    for emitter, rays, reach in ((EMITTER, {}, 0.7), (None, {"edge": [np.array([(0.4, 0.0), (1.0, 3.0)])]}, 0.4)):
+    edge = {"edge": [np.array([(0.4, 0.0), (1.0, 3.0)])]}
+    for emitter, rays, reach in ((EMITTER, {}, 0.7), (None, edge, 0.4)):
         flat = [c.get_xdata() for c in drawn(rays, emitter).lines if np.array_equal(c.get_ydata(), [0, 0])]
         assert [-reach, reach] in [list(x) for x in flat]
 
@@ -184,7 +193,8 @@ def test_the_share_found_is_marked_at_the_target_edge():
     """A dot stands at (half-angle, share) and its value with error is written beside it."""
     figure = Figure()
     curve = {"angle_deg": [0, 3, 6, 9], "share": [0, 0.4, 0.7, 0.8], "ceiling": [0, 0.6, 0.9, 0.9]}
-    draw_encircled(figure, curve, {"half_angle_deg": 6.0, "share": 0.75}, {"share": 0.7, "share_se": 0.002}, {"ceiling": 0.9})
+    asked, got = {"half_angle_deg": 6.0, "share": 0.75}, {"share": 0.7, "share_se": 0.002}
+    draw_encircled(figure, curve, asked, got, {"ceiling": 0.9})
     dots = [(c.get_xdata()[0], c.get_ydata()[0]) for c in figure.axes[0].lines if c.get_marker() == "o"]
     assert dots == [(6.0, 0.7)]
     words = "\n".join(texts(figure)).replace("\u00a0", " ")
@@ -210,14 +220,65 @@ def test_the_scale_bar_is_true(spot, length, words):
 
 def test_the_second_exposure_is_four_stops_longer():
     """What is a sixteenth of the peak is white in the second picture, and its lux are a sixteenth."""
-    grid = np.array([[1.0, 1 / 16], [1 / 32, 0.0]])
+    r, _, _ = radius(61)
+    grid = np.where(r < 8, 1.0, np.where(r < 20, 1 / 16, 1 / 32))
     figure = Figure()
     draw_spot(figure, {"grid": grid, "extent_deg": 10.0}, {}, {"peak_cd": 16000.0})
     first, second = (ax.images[0].get_array() for ax in figure.axes)
-    assert first[0, 0] == second[0, 0] == second[0, 1] == pytest.approx(1.0)
-    assert second[1, 0] == pytest.approx(187.5 / 255, abs=2e-4)  # half of white, see above
+    centre, middle, outer = (30, 30), (30, 44), (30, 55)
+    assert first[centre] == second[centre] == second[middle] == pytest.approx(1.0)
+    assert first[middle] == pytest.approx(grey(1 / 16)) and second[outer] == pytest.approx(grey(1 / 2))
     titles = [ax.get_title(loc="left") + ax.get_title() for ax in figure.axes]
     assert "16\u202f000 lx at 1 m" in titles[0] and "1000 lx at 1 m" in titles[1]
+
+
+def radius(count=61):
+    """Distance (cells) of each cell of a picture from its middle, and the offsets along x and y."""
+    y, x = np.indices((count, count)) - (count - 1) / 2
+    return np.hypot(x, y), x, y
+
+
+def test_pure_grain_is_averaged_out():
+    """A round spot with 10 % grain comes out within 2 % of the true one, but for its innermost cells."""
+    r, _, _ = radius()
+    spot = np.exp(-((r / 18) ** 2))
+    noisy = spot * (1 + 0.1 * np.random.default_rng(5).normal(size=spot.shape))
+    outer = (r > 4) & (r < 30)  # whole rings of 25 cells and more
+    assert np.std((noisy / spot - 1)[outer]) > 0.09
+    assert np.std((without_grain(noisy) / spot - 1)[outer]) < 0.02
+
+
+def test_structure_of_the_die_stays():
+    """A square spot without grain keeps its corners; its edge, 3 cells wide, is softened by one cell only.
+
+    The mean of each ring alone would be off by more than a quarter of the peak.
+    """
+    _, x, y = radius()
+    square = 1 / (1 + np.exp((np.maximum(abs(x), abs(y)) - 18) / 3))
+    ring = square[np.rint(np.hypot(x, y)) == 21]
+    assert ring.max() - ring.mean() > 0.25
+    assert np.abs(without_grain(square) - square).max() < 0.08
+
+
+def test_a_round_picture_is_left_alone():
+    """Without grain and without structure nothing changes beyond the smoothing over one cell.
+
+    That is half the curvature: ½ · 2/18² = 0.0031 at the middle, and a little for rings of few cells.
+    """
+    r, _, _ = radius()
+    spot = np.exp(-((r / 18) ** 2))
+    assert np.abs(without_grain(spot) - spot).max() < 6e-3
+
+
+def test_white_is_the_peak_shown_not_the_grain():
+    """Lux at white follow the picture shown: one bright grain in an even field does not set them."""
+    grid = np.ones((41, 41))
+    grid[20, 33] = 2.0
+    figure = Figure()
+    draw_spot(figure, {"grid": grid, "extent_deg": 10.0, "peak_cd": 2000.0}, {}, {})
+    title = figure.axes[0].get_title()
+    lux = float(re.search(r"= ([\d.]+)\s*lx", title.replace("\u202f", "")).group(1))
+    assert 1000 <= lux < 1200
 
 
 def log():
@@ -230,7 +291,7 @@ def test_steps_are_counted_through_all_stages():
     """A stage that starts again at 0 carries on from the step before; worked by hand."""
     step, stages = timeline(log())
     assert step.tolist() == [0, 5, 10, 10, 15, 20]
-    assert stages == [("a", 0, 2), ("b", 2, 5)]
+    assert stages == [("a", 0, 2), ("b", 3, 5)]
 
 
 def test_steps_already_cumulative_are_left_alone():
@@ -243,6 +304,27 @@ def test_slack_is_the_distance_to_the_nearer_bound():
     """Between 0.6 and 1.2 the values 0.5, 0.9, 1.3 have slack -0.1, 0.3, -0.1."""
     found = slack(log(), {"name": "wall", "unit": "mm", "lower": 0.6, "upper": 1.2})
     assert found[[0, 3, 5]] == pytest.approx([-0.1, 0.3, -0.1])
+
+
+def test_angles_of_the_log_become_degrees():
+    """A column without suffix is in rad: 0.5 rad over a bound of 20° leaves 8.648°; _deg stays as it is."""
+    draft = {"name": "flank draft", "unit": "deg", "lower": 20.0, "upper": None}
+    assert slack([{"flank draft": 0.5}], draft) == pytest.approx(28.64788976 - 20)  # 0.5 · 180/π, by hand
+    assert slack([{"flank_draft_deg": 21.5}], draft) == pytest.approx(1.5)
+
+
+def test_stages_of_one_round_are_shaded_together():
+    """Words before the first comma name the group; neighbours only."""
+    stages = [("round 1, start 1: x", 0, 3), ("round 1, start 2: y", 4, 6), ("round 2, start 1: x", 7, 9)]
+    assert groups([*stages, ("end", 10, 11)]) == [("round 1", 0, 6), ("round 2", 7, 9), ("end", 10, 11)]
+
+
+def test_lines_are_broken_between_stages():
+    """Two stages make two pieces of merit, each with its own rows only."""
+    figure = Figure()
+    draw_convergence(figure, log(), [])
+    pieces = [c.get_xdata().tolist() for c in figure.axes[1].lines]
+    assert pieces == [[0, 5, 10], [10, 15, 20]]
 
 
 def test_an_empty_cell_is_a_gap():
@@ -262,7 +344,7 @@ def test_a_log_without_shares_or_constraints_is_drawn():
 def test_the_ledger_bar_is_to_scale():
     """Each account is as long as its fraction, end to end."""
     figure = Figure()
-    draw_ledger(figure, [("target", "in the target", 0.8), ("back", "backward", 0.15), ("foot", "below the foot", 0.05)])
+    draw_ledger(figure, [("target", "in it", 0.8), ("back", "backward", 0.15), ("foot", "below it", 0.05)])
     pieces = [p for p in figure.axes[0].patches if isinstance(p, Rectangle)]
     assert [p.get_width() for p in pieces] == pytest.approx([0.8, 0.15, 0.05])
     assert [p.get_x() for p in pieces] == pytest.approx([0.0, 0.8, 0.95])
@@ -307,5 +389,6 @@ def test_an_inlined_drawing_is_self_contained():
 
 def test_inlining_keeps_the_drawing():
     """Size and prologue go, shapes stay."""
-    document = '<?xml version="1.0"?>\n<svg width="9pt" height="9pt" viewBox="0 0 9 9" xmlns="urn:x"><path id="p" d="M 0 0"/></svg>'
-    assert inline(document, "q") == '<svg viewBox="0 0 9 9"><path id="q-p" d="M 0 0"/></svg>'
+    head = '<?xml version="1.0"?>\n<svg width="9pt" height="9pt" viewBox="0 0 9 9" xmlns="urn:x">'
+    shown = inline(head + '<path id="p" d="M 0 0"/></svg>', "q")
+    assert shown == '<svg viewBox="0 0 9 9"><path id="q-p" d="M 0 0"/></svg>'
