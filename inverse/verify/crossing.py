@@ -153,7 +153,7 @@ def _pairs(chain, ray, value, slope, node, at):
     node, at, middle, largest, d0, d1, first, last = (
         x[keep] for x in (node, at, middle, largest, d0, d1, first, last)
     )
-    rising = np.where(last, d1 < 0.0, d0 > 0.0) & ~first | first & (d1 < 0.0)  # sign of the slope before
+    rising = np.where(first, d1 < 0.0, d0 > 0.0)  # towards the extremum
     early, late = np.zeros_like(middle), np.ones_like(middle)
     bend, near = d1 - d0, (middle < 0.5) & ~first | last  # secant from the nearer node, never from the axis
     before, tilt_before = np.where(near, 0.0, 1.0), np.where(near, d0, d1)
