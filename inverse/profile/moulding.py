@@ -7,8 +7,9 @@ Draft, rim and step hold by construction (``lens``) and are measured all the sam
 """
 
 from dataclasses import dataclass
-from typing import Callable
+from typing import Callable, NamedTuple
 
+import jax
 import jax.numpy as jnp
 import numpy as np
 
@@ -21,7 +22,7 @@ COARSE, DENSE = 48, 400  # samples a curve: in the refinement, in the final chec
 
 @dataclass(frozen=True)
 class Limit:
-    """A measured quantity in an interval. ``measure(shape, samples) -> ()`` in ``unit``; ``where`` in words."""
+    """A measured quantity in an interval. ``measure(cloud) -> ()`` in ``unit``; ``where`` in words."""
 
     name: str
     unit: str
@@ -32,97 +33,100 @@ class Limit:
     scale: float = 1.0  # a deviation of this size matters as much as the whole merit
 
 
-def _points(graph, count, over_radius):
-    x, value, _ = graph.sample(count)
-    return jnp.stack([x, value] if over_radius else [value, x], axis=-1)
+class Cloud(NamedTuple):
+    """Samples of a shape, made once for all measures. Points (k, 2) in mm, slopes (k,)."""
+
+    shape: Shape
+    centre: jax.Array
+    pocket: jax.Array  # centre lens and wall
+    flank: jax.Array
+    outer: jax.Array  # exit face, or ring, step and disc
+    wall_slope: jax.Array
+    flank_slope: jax.Array
+    face_slopes: jax.Array  # of all graphs over the radius
 
 
-def _line(a, b, count):
-    w = jnp.linspace(0.0, 1.0, count)[:, None]
-    return jnp.stack(a)[None, :] * (1.0 - w) + jnp.stack(b)[None, :] * w
+def cloud(s: Shape, count) -> Cloud:
+    """``count`` samples a curve."""
+    r, z, centre_slope = s.centre.sample(count)
+    centre = jnp.stack([r, z], axis=-1)
+    height, radius, wall_slope = s.wall.sample(count)
+    wall = jnp.stack([radius, height], axis=-1)
+    height, radius, flank_slope = s.flank.sample(count)
+    flank = jnp.stack([radius, height], axis=-1)
+    r, z, face_slope = s.exit.sample(count)
+    outer, slopes = [jnp.stack([r, z], axis=-1)], [centre_slope, face_slope]
+    if s.disc is not None:
+        w = jnp.linspace(0.0, 1.0, max(count // 4, 8))[:, None]
+        r, z, disc_slope = s.disc.sample(count)
+        disc = jnp.stack([r, z], axis=-1)
+        outer += [outer[0][:1] * (1.0 - w) + disc[-1:] * w, disc]
+        slopes.append(disc_slope)
+    return Cloud(
+        s, centre, jnp.concatenate([centre, wall]), flank, jnp.concatenate(outer), wall_slope, flank_slope,
+        jnp.concatenate(slopes),
+    )  # fmt: skip
 
 
-def _outer(s: Shape, count):
-    """Points of the exit side: face, or ring, step and disc."""
-    face = _points(s.exit, count, True)
-    if s.disc is None:
-        return face
-    step = _line(
-        (s.exit.start, s.exit.coefficients[0]), (s.disc.end, s.disc.coefficients[-1]), max(count // 4, 8)
-    )
-    return jnp.concatenate([face, step, _points(s.disc, count, True)])
-
-
-def _pocket(s: Shape, count):
-    return jnp.concatenate([_points(s.centre, count, True), _points(s.wall, count, False)])
+def _squares(a, b):
+    """Squared distances (len(a), len(b))."""
+    return (a[:, 0, None] - b[None, :, 0]) ** 2 + (a[:, 1, None] - b[None, :, 1]) ** 2
 
 
 def _gap(a, b):
-    d2 = jnp.sum((a[:, None, :] - b[None, :, :]) ** 2, axis=-1)
-    return jnp.sqrt(jnp.min(d2) + 1e-18)
+    return jnp.sqrt(jnp.min(_squares(a, b)) + 1e-18)
 
 
-def side_wall(s, count):
+def side_wall(c):
     """Least distance between the pocket (wall and centre lens) and the flank."""
-    return _gap(_pocket(s, count), _points(s.flank, count, False))
+    return _gap(c.pocket, c.flank)
 
 
-def top_wall(s, count):
+def top_wall(c):
     """Least distance between the pocket and the exit side."""
-    return _gap(_pocket(s, count), _outer(s, count))
+    return _gap(c.pocket, c.outer)
 
 
-def neck_wall(s, count):
-    """Least distance between the flank and the inner part of the exit side (the rim itself is thinner)."""
-    inner = _outer(s, count)
-    flank = _points(s.flank, count, False)
-    # the wedge at the rim is the rim's business: measure where the flank is a wall and a half inside it
-    inside = (s.rim_radius - flank[:, 0]) > 1.5 * (s.exit.coefficients[-1] - s.rim_height)
-    d2 = jnp.sum((flank[:, None, :] - inner[None, :, :]) ** 2, axis=-1)
-    return jnp.sqrt(jnp.min(jnp.where(inside[:, None], d2, 1e6)))
+def neck_wall(c):
+    """Least distance between the flank and the exit side, away from the rim (which is thinner by right)."""
+    s = c.shape
+    inside = (s.rim_radius - c.flank[:, 0]) > 1.5 * (s.exit.coefficients[-1] - s.rim_height)
+    return jnp.sqrt(jnp.min(jnp.where(inside[:, None], _squares(c.flank, c.outer), 1e6)))
 
 
-def part_height(s, count):
+def part_height(c):
     """Foot to the highest point."""
-    return jnp.max(_outer(s, count)[:, 1]) - s.wall.start
+    return jnp.max(c.outer[:, 1]) - c.shape.wall.start
 
 
-def flank_draft(s, count):
-    _, _, slope = s.flank.sample(count)
-    return jnp.min(jnp.arctan(slope))
+def flank_draft(c):
+    return jnp.min(jnp.arctan(c.flank_slope))
 
 
-def wall_draft(s, count):
-    _, _, slope = s.wall.sample(count)
-    return jnp.min(jnp.arctan(-slope))
+def wall_draft(c):
+    return jnp.min(jnp.arctan(-c.wall_slope))
 
 
-def face_slope(s, count):
-    """Steepest slope of the surfaces drawn along the axis (centre lens, exit side), as its draft."""
-    steepest = jnp.max(jnp.abs(s.centre.sample(count)[2]))
-    steepest = jnp.maximum(steepest, jnp.max(jnp.abs(s.exit.sample(count)[2])))
-    if s.disc is not None:
-        steepest = jnp.maximum(steepest, jnp.max(jnp.abs(s.disc.sample(count)[2])))
-    return jnp.arctan(1.0 / steepest)
+def face_draft(c):
+    """Draft of the surfaces drawn along the axis (centre lens, exit side), where they are steepest."""
+    return jnp.arctan(1.0 / jnp.max(jnp.abs(c.face_slopes)))
 
 
-def rim_thickness(s, count):
-    return s.exit.coefficients[-1] - s.rim_height
+def rim_thickness(c):
+    return c.shape.exit.coefficients[-1] - c.shape.rim_height
 
 
-def foot_width(s, count):
-    return s.foot_radius - s.mouth_radius
+def foot_width(c):
+    return c.shape.foot_radius - c.shape.mouth_radius
 
 
 def clearance(emitter: Emitter):
     """Measure: least distance from the dies (or the dome) to the pocket."""
 
-    def measure(s, count):
-        p = _pocket(s, count)
-        r, z = p[:, 0], p[:, 1]
+    def measure(c):
+        r, z = c.pocket[:, 0], c.pocket[:, 1]
         if emitter.dome is not None:
-            above = jnp.sqrt(r * r + jnp.maximum(z, 0.0) ** 2 + 1e-18) - emitter.dome.radius
-            return jnp.min(above)
+            return jnp.min(jnp.sqrt(r * r + jnp.maximum(z, 0.0) ** 2 + 1e-18)) - emitter.dome.radius
         beyond = jnp.maximum(r - emitter.reach, 0.0)
         return jnp.sqrt(jnp.min(beyond**2 + z * z) + 1e-18)
 
@@ -130,51 +134,43 @@ def clearance(emitter: Emitter):
 
 
 def bulge(emitter: Emitter):
-    """Measure: least height of the centre lens over the line from the far edge of the emitter to the corner.
+    """Measure: how far the centre lens stays above the line from the emitter's far edge to the corner (a slope).
 
     A bulge below that line would hide part of the pocket wall from the emitter.
     """
     reach = emitter.reach * emitter.index  # a dome shows its dies magnified by its index
 
-    def measure(s, count):
-        x, z, _ = s.centre.sample(count)
-        sight = s.wall.end * (x[:-1] + reach) / (s.centre.end + reach)
-        return jnp.min((z[:-1] - sight) / (s.centre.end - x[:-1]))
+    def measure(c):
+        x, z = c.centre[:-1, 0], c.centre[:-1, 1]
+        end = c.shape.centre.end
+        sight = c.shape.wall.end * (x + reach) / (end + reach)
+        return jnp.min((z - sight) / (end - x))
 
     return measure
 
 
-def thickness(s, count):
-    """Diameter of the largest circle in the section, by its centre over a grid between pocket and outside."""
-    count = min(count, 48)
-    w = jnp.linspace(0.02, 0.98, 25)
-    boundary = jnp.concatenate([_pocket(s, count), _points(s.flank, count, False), _outer(s, count)])
-    pocket = _pocket(s, count)
-    x = pocket[:, 0] / s.centre.end
-    top = s.exit.at(jnp.clip(pocket[:, 0], 0.0, s.exit.end))[0]
-    if s.disc is not None:
-        top = jnp.where(pocket[:, 0] < s.exit.start, s.disc.at(jnp.clip(pocket[:, 0], 0.0, s.disc.end))[0], top)
-    up = jnp.stack([pocket[:, 0], top], -1)
-    flank = _points(s.flank, count, False)
-    face = jnp.stack([flank[:, 0], s.exit.at(jnp.maximum(flank[:, 0], s.exit.start))[0]], -1)
-    del x
-    grids = [
-        (pocket[None] * (1 - w[:, None, None]) + up[None] * w[:, None, None]).reshape(-1, 2),
-        (flank[None] * (1 - w[:, None, None]) + face[None] * w[:, None, None]).reshape(-1, 2),
-    ]
-    centres = jnp.concatenate(grids)
-    d2 = jnp.sum((centres[:, None, :] - boundary[None, :, :]) ** 2, axis=-1)
-    return 2.0 * jnp.sqrt(jnp.max(jnp.min(d2, axis=1)))
+def thickness(c):
+    """Diameter of the largest circle in the section, its centre on a grid between pocket or flank and exit side."""
+    s, every = c.shape, max(len(c.flank) // 48, 1)
+    boundary = jnp.concatenate([c.pocket, c.flank, c.outer])
+    w = jnp.linspace(0.02, 0.98, 25)[:, None, None]
+    grids = []
+    for low in (c.pocket[::every], c.flank[::every]):
+        top = s.exit.at(low[:, 0])[0]
+        if s.disc is not None:
+            top = jnp.where(low[:, 0] < s.exit.start, s.disc.at(low[:, 0])[0], top)
+        high = jnp.stack([low[:, 0], top], axis=-1)
+        grids.append((low[None] * (1.0 - w) + high[None] * w).reshape(-1, 2))
+    return 2.0 * jnp.sqrt(jnp.max(jnp.min(_squares(jnp.concatenate(grids), boundary), axis=1)))
 
 
-def concave_radius(s, count):
-    """Least radius of curvature of the optical curves where the tool must fit into the part's hollow side."""
+def curve_radius(c):
+    """Least radius of curvature of the optical curves."""
+    s = c.shape
     worst = jnp.zeros(())
-    graphs = [s.centre, s.wall, s.flank, s.exit] + ([s.disc] if s.disc is not None else [])
-    for g in graphs:
-        x, _, slope = g.sample(count)
-        bend = jnp.diff(slope) / jnp.diff(x)
-        mid = 0.5 * (slope[1:] + slope[:-1])
+    for g in [s.centre, s.wall, s.flank, s.exit] + ([s.disc] if s.disc is not None else []):
+        x, _, slope = g.sample(len(c.flank))
+        bend, mid = jnp.diff(slope) / jnp.diff(x), 0.5 * (slope[1:] + slope[:-1])
         worst = jnp.maximum(worst, jnp.max(jnp.abs(bend) / (1.0 + mid * mid) ** 1.5))
     return 1.0 / jnp.maximum(worst, 1e-6)
 
@@ -191,17 +187,17 @@ def limits(box: Envelope, emitter: Emitter) -> list[Limit]:
         Limit("pocket clearance", "mm", clearance(emitter), "emitter to pocket", lower=box.clearance),
         Limit("pocket draft", "rad", wall_draft, "pocket wall", lower=box.draft, scale=0.2),
         Limit("flank draft", "rad", flank_draft, "flank", lower=box.draft, scale=0.2),
-        Limit("face draft", "rad", face_slope, "centre lens and exit face", lower=box.draft, scale=0.2),
+        Limit("face draft", "rad", face_draft, "centre lens and exit face", lower=box.draft, scale=0.2),
         Limit("line of sight", "1", bulge(emitter), "centre lens hides no pocket wall", lower=0.0, scale=0.5),
     ]
     if box.thickest is not None:
         rows.append(Limit("greatest thickness", "mm", thickness, "largest inscribed circle", upper=box.thickest))
     if box.corner_radius > 0.0:
-        rows.append(Limit("least curve radius", "mm", concave_radius, "optical curves", lower=box.corner_radius))
+        rows.append(Limit("least curve radius", "mm", curve_radius, "optical curves", lower=box.corner_radius))
     return rows
 
 
 def measured(lens: Lens, box: Envelope, rows, samples):
     """Values of every limit, shape (len(rows),)."""
-    s = shape(lens, box)
-    return jnp.stack([row.measure(s, samples) for row in rows])
+    c = cloud(shape(lens, box), samples)
+    return jnp.stack([row.measure(c) for row in rows])

@@ -53,31 +53,32 @@ def shifted(u, shift):
 
 
 def trace(lens: Lens, scene: Scene, u, blur):
-    """All designed paths. Returns (beams, lost, residual): weights are fractions of the emitted flux.
+    """All designed paths. Returns (beam, lost, residual); weights are fractions of the emitted flux.
 
-    ``u`` (N, 3) uniform numbers.  ``lost`` maps a name to a fraction of the emitted flux; beams
+    ``u`` (N, 3) uniform numbers.  ``lost`` maps a name to a fraction of the emitted flux; beam
     and lost sum to the launched flux.  ``residual`` is the worst intersection (mm) of a lit ray.
     """
     source, box, glass = scene.launcher, scene.box, scene.glass
     shape = shape_of(lens, box)
-    rho, phi = source.radius(u[:, 0]), np.pi * u[:, 1]
-    corner = source.split(rho, phi, lens.corner[0], lens.corner[1])
-    floor = jnp.full_like(rho, np.pi / 2)
+    rho, azimuth = source.radius(u[:, 0]), np.pi * u[:, 1]
+    turn = (jnp.cos(azimuth), jnp.sin(azimuth))
+    corner = source.split(rho, turn, lens.corner[0], lens.corner[1])
+    floor = jnp.zeros_like(rho)
     if box.foot > 0.0:
-        floor = source.split(rho, phi, shape.mouth_radius, jnp.asarray(box.foot))
+        floor = source.split(rho, turn, shape.mouth_radius, jnp.asarray(box.foot))
 
-    def over_rim(theta):
-        p, d, _ = source.ray(rho, phi, theta)
+    def over_rim(c):
+        p, d, _ = source.ray(rho, turn, c)
         return route.height_at_rim(p, d, shape, glass) - shape.rim_height
 
-    nudge = 1e-7  # rad; keeps both ends of the bracket on the wall's side of the corner
-    over = bracketed_root(over_rim, corner + nudge, floor - nudge)
+    nudge = 1e-7  # keeps both ends of the bracket on the wall's side of the corner
+    over = bracketed_root(over_rim, floor + nudge, corner - nudge)
     at_corner, at_rim, at_floor = map(source.cumulative, (corner, over, floor))
     count, few = u.shape[0], max(u.shape[0] // 4, 1)  # the direct part is small: a quarter of the points do
 
     def rays(low, high, some):
-        theta = source.angle(low[:some] + u[:some, 2] * (high - low)[:some])
-        p, d, weight = source.ray(rho[:some], phi[:some], theta)
+        c = source.cosine(low[:some] + u[:some, 2] * (high - low)[:some])
+        p, d, weight = source.ray(rho[:some], tuple(t[:some] for t in turn), c)
         return p, d, weight * (high - low)[:some] / some
 
     lost = {"under the foot": jnp.sum(1.0 - at_floor) / count}
@@ -98,11 +99,10 @@ def trace(lens: Lens, scene: Scene, u, blur):
     *turned, losses, miss = route.flank(*rest, shape, glass, blur)
     book(losses)
     residual.append(jnp.max(jnp.where(rest[2] > LIT, miss, 0.0)))
-    beams = route.leave(*_join(central, straight, turned), shape, glass, blur)
-    for beam in beams:
-        book(beam.lost)
-        residual.append(jnp.max(jnp.where(beam.weight > LIT, beam.residual, 0.0)))
-    return beams, lost, jnp.max(jnp.stack(residual))
+    beam = route.leave(*_join(central, straight, turned), shape, glass, blur)
+    book(beam.lost)
+    residual.append(jnp.max(jnp.where(beam.weight > LIT, beam.residual, 0.0)))
+    return beam, lost, jnp.max(jnp.stack(residual))
 
 
 def _join(*trees):
@@ -149,14 +149,9 @@ def flux_inside(lens: Lens, scene: Scene, u, angles, softness, blur):
 
     Returns (shares (k,), facts): facts holds the total, the losses and the largest residual.
     """
-    beams, lost, residual = trace(lens, scene, u, blur)
-    top = highest(lens, scene.box)
+    beam, lost, residual = trace(lens, scene, u, blur)
     edge = jnp.tan(jnp.asarray(angles)) ** 2
-    shares, total, turned = jnp.zeros_like(edge), 0.0, 0.0
-    for beam in beams:
-        q, weight, back = land(beam, scene, top)
-        inside = jax.nn.sigmoid((1.0 - q[:, None] / edge[None, :]) / softness)
-        shares = shares + weight @ inside
-        total, turned = total + jnp.sum(weight), turned + jnp.sum(back)
-    lost["reflected by the port"] = turned
-    return shares, {"forward": total, "lost": lost, "residual": residual}
+    q, weight, turned = land(beam, scene, highest(lens, scene.box))
+    shares = weight @ jax.nn.sigmoid((1.0 - q[:, None] / edge[None, :]) / softness)
+    lost["reflected by the port"] = jnp.sum(turned)
+    return shares, {"forward": jnp.sum(weight), "lost": lost, "residual": residual}

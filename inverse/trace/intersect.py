@@ -15,7 +15,7 @@ import jax.numpy as jnp
 
 from inverse.profile import bspline
 
-STEPS = 7  # Newton steps; the residual is returned, so a ray that needs more is seen
+STEPS = 5  # Newton steps; the residual is returned, so a ray that needs more is seen
 TINY = 1e-30  # mm²; keeps the radius differentiable on the axis
 
 

@@ -45,7 +45,7 @@ def _radius_at(p, d, z):
 def into_wall(p, d, shape, glass):
     """Pocket wall: point, direction inside, transmittance, residual."""
     guess = intersect.to_cylinder(p, d, 0.5 * (shape.mouth_radius + shape.wall.coefficients[-1]))
-    q, m, residual = intersect.with_radius(p, d, shape.wall, guess, steps=5)
+    q, m, residual = intersect.with_radius(p, d, shape.wall, guess, steps=4)
     inside, passed = interface.refract(d, m, 1.0, glass.index)
     return q, inside, passed, residual
 
@@ -56,6 +56,12 @@ def height_at_rim(p, d, shape, glass):
     return q[2] + intersect.to_cylinder(q, inside, shape.rim_radius) * inside[2]
 
 
+def _soft(x, blur):
+    """0 below −2 blur, 1 above 2 blur, a cubic in between."""
+    w = jnp.clip(0.5 + 0.25 * x / blur, 0.0, 1.0)
+    return w * w * (3.0 - 2.0 * w)
+
+
 def _upward(d):
     """Whether a ray climbs, and a direction that is safe to divide by."""
     ok = d[2] > 1e-3
@@ -63,12 +69,9 @@ def _upward(d):
 
 
 def leave(p, d, weight, shape, glass, blur):
-    """From inside the body at ``p`` out through the exit face, or through ring and disc.
-
-    Returns one beam a face; ``past the exit face`` is booked on the first.
-    """
+    """From inside the body at ``p`` out through the exit face, or through ring and disc: one Beam for all."""
     climbs, d = _upward(d)
-    soft = lambda x: jax.nn.sigmoid(x / blur)
+    soft = lambda x: _soft(x, blur)
     step = lambda graph: intersect.with_height(p, d, graph, (graph.at(intersect.radius(p))[0] - p[2]) / d[2])
     hits = [step(shape.exit)]
     outer = soft(shape.exit.end - intersect.radius(hits[0][0])) * climbs
@@ -102,7 +105,11 @@ def leave(p, d, weight, shape, glass, blur):
         }
         beams.append(Beam(q, out, entered * path * passed * clear, lost, residual))
     beams[0].lost["past the exit face"] = weight * (1.0 - sum(windows))
-    return beams
+    if len(beams) == 1:
+        return beams[0]
+    join = lambda *parts: jnp.concatenate(parts)
+    whole = jax.tree_util.tree_map(join, *(b._replace(lost={}) for b in beams))
+    return whole._replace(lost={**beams[1].lost, **{k: v + beams[1].lost.get(k, 0.0) for k, v in beams[0].lost.items()}})
 
 
 def centre(p, d, weight, shape, glass):
@@ -133,7 +140,7 @@ def flank(q, inside, weight, shape, glass, blur):
         path = jnp.exp(-glass.absorption * _distance(q, f)) if glass.absorption else 1.0
         corner_r, corner_z = shape.centre.end, shape.wall.end
         _, safe = _upward(out)
-        past = jax.nn.sigmoid((_radius_at(f, safe, corner_z) - corner_r) / blur)
+        past = _soft(_radius_at(f, safe, corner_z) - corner_r, blur)
         past = jnp.where(f[2] < corner_z, past, 1.0)
         lost = {
             "absorbed in the material": weight * (1.0 - path),
