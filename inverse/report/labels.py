@@ -37,7 +37,7 @@ LIMIT = {
     "etendue_ratio": ("Étendue, target ÷ source", "1"),
     "skewness_ceiling": ("Ceiling from skewness, before losses", "%"),
     "brightness_ceiling": ("Ceiling from brightness, before losses", "%"),
-    "transmission": ("Transmission of two uncoated surfaces", "%"),
+    "transmission": ("Transmission of the uncoated surfaces", "%"),
     "smallest_aperture_mm": ("Smallest aperture for this beam", "mm"),
     "narrowest_half_angle_deg": ("Narrowest half-angle from this aperture", "°"),
     "largest_candela": ("Largest intensity on the axis", "cd"),

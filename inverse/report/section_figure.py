@@ -18,6 +18,7 @@ INNER = ("centre lens", "pocket wall", "foot", "LED")  # named on the left, the 
 GLASS, DOME, DIE = "#dce9f3", "#fdf3c8", "#f2b705"
 LENS_WIDTH = 0.60  # of the picture's width; the rest is for the names
 BEAM_ABOVE = 0.42  # height of free beam shown, in heights of the lens
+LINE = 0.023  # distance of two lines of text in widths of the picture: 13 points of 576
 PER_CURVE = 160  # points a curve: chords of a 20 mm lens stay within a few µm, far below a pixel
 HALO = [Stroke(linewidth=2.4, foreground="white", alpha=0.85), Normal()]
 
@@ -39,7 +40,8 @@ def bounds(section):
 def draw_section(ax, section, rays=None, emitter=None, *, labels=True):
     """Draw ``section`` on ``ax`` and set its limits and equal scales.
 
-    ``rays``: {"centre": [...], "edge": [...]} of polylines (k, 2), columns r (signed) and z in mm.
+    ``rays``: {"centre": [...], "edge": [...]} of polylines (k, 2), columns r (signed) and z in mm;
+    those that end above the lens are carried on to the upper edge of the drawing.
     ``emitter``: {"reach_mm", "dome_radius_mm", "above_board_mm"}, each optional; without
     ``reach_mm`` the die is as wide as the edge rays' starting points.  ``labels`` names the curves.
     """
@@ -48,11 +50,11 @@ def draw_section(ax, section, rays=None, emitter=None, *, labels=True):
     _lens(ax, section)
     parts = _led(ax, section, rays, emitter, left, right)
     for key, colour in (("edge", RED), ("centre", BLUE)):
-        lines = [np.asarray(p, float) for p in rays.get(key, ())]
+        lines = [_carried_on(np.asarray(p, float), section, high) for p in rays.get(key, ())]
         ax.add_collection(LineCollection(lines, colors=colour, linewidths=0.7, alpha=0.75, zorder=3))
-    _key(ax, rays)
     ax.axvline(0.0, color=FAINT, linewidth=0.7, dashes=(9, 3, 2, 3), zorder=1)
     ax.set(xlim=(left, right), ylim=(low, high), aspect="equal")
+    _key(ax, rays)
     ax.grid(False)
     ax.spines["left"].set_visible(False)
     ax.tick_params(left=False, labelleft=False)
@@ -61,6 +63,15 @@ def draw_section(ax, section, rays=None, emitter=None, *, labels=True):
     ax.set_xticks([x for x in ax.get_xticks() if abs(x) <= LENS_WIDTH * right])
     if labels:
         _names(ax, section, parts)
+
+
+def _carried_on(path, section, high):
+    """A ray (k, 2) that has left upwards, its last leg carried on to the upper edge of the drawing."""
+    top = section.dense(PER_CURVE)[0][:, 1].max()
+    (r0, z0), (r1, z1) = path[-2:]
+    if not (z1 > z0 and top < z1 < high):
+        return path
+    return np.concatenate([path, [(r1 + (high - z1) * (r1 - r0) / (z1 - z0), high)]])
 
 
 def _lens(ax, section):
@@ -103,22 +114,24 @@ def _led(ax, section, rays, emitter, left, right):
 def _key(ax, rays):
     words = {"centre": ("LED centre", BLUE), "edge": ("LED edge", RED)}
     shown = [words[k] for k in ("centre", "edge") if rays.get(k)]
+    left, right, low, high = ax.get_xlim() + ax.get_ylim()
+    x, y, gap = left + 0.005 * (right - left), high, LINE * (right - left)
     if shown:
-        ax.text(0.005, 0.965, "Rays from the", transform=ax.transAxes, va="center")
+        ax.text(x, y - gap, "Rays from the", va="center")
     for i, (text, colour) in enumerate(shown):
-        y = 0.965 - 0.062 * (i + 1)
-        ax.plot([0.007, 0.037], [y, y], transform=ax.transAxes, color=colour, linewidth=1.6)
-        ax.text(0.047, y, text, transform=ax.transAxes, color=colour, va="center")
+        y = high - (i + 2) * gap
+        ax.plot([x, x + 1.4 * gap], [y, y], color=colour, linewidth=1.6)
+        ax.text(x + 1.9 * gap, y, text, color=colour, va="center")
 
 
 def _names(ax, section, parts):
     """Curve names, and ``parts`` [(name, (r, z))] that are no curves, beside the lens."""
     left, right, low, high = ax.get_xlim() + ax.get_ylim()
-    gap = 0.062 * (high - low)
+    gap = LINE * (right - left)
     anchors = [(c.name, _middle(c)) for c in section.curves] + parts
     for side, x in ((-1, 0.80 * left), (1, 0.80 * right)):
         mine = sorted(((n, p) for n, p in anchors if (n in INNER) == (side < 0)), key=lambda a: a[1][1])
-        heights = spread([p[1] for _, p in mine], gap, low + gap / 2, high - 3.5 * gap)
+        heights = spread([p[1] for _, p in mine], gap, low + gap / 2, high - 4 * gap)
         for (name, (r, z)), y in zip(mine, heights):
             line = [x - side * 0.01 * right, side * abs(r)], [y, z]
             ax.plot(*line, color=SOFT, linewidth=0.7, zorder=6, path_effects=HALO)

@@ -5,7 +5,17 @@ tests can find it), ``name`` and ``text``.  Keys nobody foresaw are shown under 
 the unit their suffix tells; ``x_se`` is the standard error of ``x`` and never a row of its own.
 """
 
-from inverse.report.digits import NO_BREAK, decimals, percent, quantity, signed, significant, tick, with_error
+from inverse.report.digits import (
+    MINUS,
+    NO_BREAK,
+    decimals,
+    percent,
+    quantity,
+    signed,
+    significant,
+    tick,
+    with_error,
+)
 from inverse.report.labels import FILES, READERS, UNITS, plain, unit_of
 from inverse.report.wording import best, ordered, part_of_best
 from inverse.verify.ledger import DESIGNED
@@ -135,7 +145,7 @@ def paths(result):
 
 
 def constraints(result):
-    """Rows {key, name, measured, bound, slack, met, active, where}; digits follow the slack that matters."""
+    """Rows {key, name, measured, bound, slack, met, active, where}; without a bound there is no verdict."""
     made = []
     for c in result.get("constraints") or []:
         unit = UNITS.get(c["unit"], c["unit"])
@@ -145,7 +155,7 @@ def constraints(result):
             "key": f"constraints.{c['name']}", "name": c["name"],
             "met": bool(c["met"]), "active": bool(c.get("active")),
             "measured": _with_unit(show(c["measured"]), unit),
-            "bound": _with_unit(" and ".join(bounds), unit) if bounds else "none",
+            "bound": _with_unit(" and ".join(bounds), unit) if bounds else "",
             "slack": "" if c.get("slack") is None else _with_unit(signed(show(c["slack"])), unit),
             "where": place(c.get("where")),
         })  # fmt: skip
@@ -167,7 +177,8 @@ def place(where):
     if where is None:
         return ""
     if isinstance(where, str):
-        return where
+        tied = where.replace(" = ", f"{NO_BREAK}={NO_BREAK}").replace(" mm", f"{NO_BREAK}mm")
+        return tied.replace(f"={NO_BREAK}-", f"={NO_BREAK}{MINUS}")
     r, z = where
     return f"r = {decimals(r, 2)}, z = {decimals(z, 2)}{NO_BREAK}mm"
 

@@ -158,6 +158,17 @@ def test_rays_are_drawn_as_given():
         assert [[list(p) for p in path] for path in given] in paths.values()
 
 
+def test_rays_that_leave_reach_the_edge_of_the_drawing():
+    """A last leg that ends above the lens goes straight on to the upper edge; one below does not."""
+    rays = {"centre": [[(0, 0), (1, 5), (1.1, 5.5)], [(0, 0), (1, 4)]]}
+    ax = drawn(rays)
+    found = [a.get_segments() for a in ax.collections if isinstance(a, LineCollection)]
+    out, stays = max(found, key=len)
+    high = ax.get_ylim()[1]
+    assert out[-1] == pytest.approx([1.1 + 0.2 * (high - 5.5), high])
+    assert stays[-1].tolist() == [1, 4]
+
+
 def beam():
     angle = np.linspace(0.5, 89.5, 90)
     return {"angle_deg": angle, "candela": 1e4 * np.exp(-angle), "candela_se": 50 * np.exp(-angle / 2)}

@@ -281,6 +281,15 @@ def test_a_violated_constraint_stands_out(words):
     assert "Not met: least wall." in text
 
 
+def test_a_quantity_without_a_bound_has_no_verdict(words):
+    """A constraint nobody bounded is measured, and neither met nor missed."""
+    found = changed()
+    place = "top at r = 0.00 mm, z = -1.5 mm"
+    found["constraints"][3].update(lower=None, upper=None, slack=None, where=place)
+    text = words(found).text
+    assert re.search(r"height\s*10\.030 mm\s*no bound\s*top at r = 0\.00 mm, z = −1\.5 mm", text)
+
+
 def test_a_missed_share_is_marked(words):
     """81.3 % where 85 % was asked is a miss in the table, whatever the badge says."""
     read = words(changed(asked={"share": 0.85}))
