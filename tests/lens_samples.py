@@ -96,7 +96,7 @@ def collimator(index=PMMA, focal=5.0, wall=3.0):
 
 
 def moulded(stepped=False, flanged=False, index=PMMA):
-    """A plausible part: drafted wall, foot 0.4 below the emitter, bulged exit face, or disc, step and ring."""
+    """A plausible part: drafted wall, foot below the emitter, bulged exit face or disc, step and ring."""
     rise = hyperboloid(index, 4.5, 2.8)
     side = flank(index, 2.8, 2.8 + index, 0.62)
     side = np.vstack([side[0] + (side[1] - side[0]) * (-0.4 - side[0, 1]) / (side[1, 1] - side[0, 1]), side])

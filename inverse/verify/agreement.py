@@ -18,7 +18,7 @@ ROUNDING = 1e-9
 
 @dataclass(frozen=True)
 class Agreement:
-    """``difference`` tracer − Monte Carlo; ``sigma`` its standard error; ``deviations`` |difference|/sigma."""
+    """``difference`` is tracer − Monte Carlo, ``sigma`` its standard error, ``deviations`` their ratio."""
 
     difference: float
     sigma: float

@@ -101,7 +101,8 @@ def _tables(chain, ray):
     """G and its slope along the chain, (nodes, k), mm² and mm."""
     # d_z along + (z − o_z) flat = base + z flat
     base = ray.dz * ray.along - ray.oz * ray.flat
-    weights = np.stack([ray.dz**2, ray.flat**2, -2.0 * base * ray.flat, -(base**2) - (ray.dz * ray.across) ** 2])
+    constant = -(base**2) - (ray.dz * ray.across) ** 2
+    weights = np.stack([ray.dz**2, ray.flat**2, -2.0 * base * ray.flat, constant])
     r, z = chain.r, chain.z
     value = np.column_stack([r * r, -z * z, z, np.ones_like(r)]) @ weights
     value[chain.twin] = value[chain.twin - 1]  # one sign a joint, whatever the rounding
@@ -191,7 +192,7 @@ def _with_time(chain, ray, at, node, s, single):
     x = flat * t + along
     facing = (dz * r1 - z1 * flat * x / np.maximum(r, np.abs(x) + np.finfo(float).tiny)) / np.hypot(r1, z1)
     # The estimate is off by up to one band in z, and by the turn of a band in direction.
-    keep = (t * dz * np.sign(dz) > -2.0 * chain.length[node]) & (facing * ray.sense[at] > -0.2) & ~shallow
+    keep = (t * np.abs(dz) > -2.0 * chain.length[node]) & (facing * ray.sense[at] > -0.2) & ~shallow
     k = np.flatnonzero(shallow)
     reach = np.sqrt(np.maximum(r[k] ** 2 - ray.across[at[k]] ** 2, 1e-6 * r[k] ** 2))  # never both the same
     t = np.concatenate([t[keep], (-along[k] - reach) / flat[k], (-along[k] + reach) / flat[k]])

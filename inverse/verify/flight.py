@@ -13,8 +13,6 @@ The first few numbers of chance after those of the source are quasi-random too: 
 refractions every photon meets.  The rest come from a pseudo-random generator of the replicate.
 """
 
-from concurrent.futures import ThreadPoolExecutor
-
 import numpy as np
 from scipy.stats import qmc
 
@@ -26,31 +24,30 @@ from inverse.verify.source import DIMENSIONS, emit, swallowed
 
 REPLICATES = 16
 BOUNCES = 30  # surfaces met; what is still under way then is a few parts per million in a clear lens
-CHUNK = 32768  # rays followed together: about 50 MB
+CHUNK = 2**15  # rays followed together: about 50 MB; a power of two keeps the quasi-random points even
 CHANCES = 4  # quasi-random numbers for the first roulettes
 ON_BOARD = 1e-9  # mm; a foot standing on the board is the board's own plane to rounding
 FREE, BOARD, LED, UNFINISHED, LOST = range(5)
 
 
-def fly(points, emitter, index, absorption, surroundings, target, rays=1_000_000, seed=1, *, threads=2):
+def fly(points, emitter, index, absorption, surroundings, target, rays=1_000_000, seed=1, *, watch=None):
     """Follow at least ``rays`` photons through the body and return the ``Landing``.
 
     ``points`` Points of the section or None (no lens); ``index`` of the body (air is 1); ``absorption``
-    per mm.  The result depends on ``seed`` but not on ``threads``.  Raises ValueError for an index below
-    1, a negative absorption, too few rays, or surroundings and targets that make no sense.
+    per mm; ``watch`` a Watcher that is told after each of the ``REPLICATES``.  The same ``seed`` gives the
+    same figures to the last digit.  Raises ValueError for an index below 1, a negative absorption, too
+    few rays, or surroundings and targets that make no sense.
     """
     if not index >= 1.0 or not absorption >= 0.0:
         raise ValueError(f"wanted index >= 1 and absorption >= 0 per mm, got {index} and {absorption}")
     if rays < 16 * REPLICATES:
         raise ValueError(f"wanted at least {16 * REPLICATES} rays, got {rays}")
     flight = _Flight(points, emitter, float(index), float(absorption), surroundings, target)
-    each = -(-rays // REPLICATES)
-    streams = np.random.SeedSequence(seed).spawn(REPLICATES)
-    if threads > 1:
-        with ThreadPoolExecutor(threads) as pool:
-            tallies = list(pool.map(lambda s: flight.replicate(each, s), streams))
-    else:
-        tallies = [flight.replicate(each, s) for s in streams]
+    each, tallies = -(-rays // REPLICATES), []
+    for stream in np.random.SeedSequence(seed).spawn(REPLICATES):
+        tallies.append(flight.replicate(each, stream))
+        if watch is not None:
+            watch.step(len(tallies), f"{each * len(tallies):,} rays")
     return gather(tallies, emitter.flux, each * REPLICATES)
 
 
@@ -73,15 +70,15 @@ class _Flight:
 
     def replicate(self, count, stream):
         scramble, chance = (np.random.default_rng(s) for s in stream.spawn(2))
-        power = int(np.ceil(np.log2(count)))
-        sobol = qmc.Sobol(DIMENSIONS + CHANCES, bits=52, seed=scramble).random_base2(power)[:count]
-        light = emit(self.emitter, sobol)
-        tally = Tally(self.grids, 1.0 / count)
-        for a in range(0, len(light.weight), CHUNK):
-            part = slice(a, a + CHUNK)
-            quasi = sobol[light.row[part], DIMENSIONS:]
-            self._follow(tally, light.origin[part], light.direction[part], light.weight[part], quasi, chance)
-        return tally
+        sobol = qmc.Sobol(DIMENSIONS + CHANCES, bits=52, seed=scramble)
+        tally = Tally(self.grids)
+        for start in range(0, count, CHUNK):  # whole powers of two, cut only at the end
+            uniform = sobol.random(CHUNK)[: count - start]
+            light = emit(self.emitter, uniform)
+            tally.emitted += float(np.sum(light.weight))
+            quasi = uniform[light.row, DIMENSIONS:]
+            self._follow(tally, light.origin, light.direction, light.weight, quasi, chance)
+        return tally.close()
 
     def _follow(self, tally, o, d, w, quasi, chance):
         """Book the whole life of one chunk: positions ``o`` (k, 3), directions ``d``, weights ``w``."""
@@ -168,6 +165,6 @@ class _Flight:
         tally.book("in target", landed[wanted])
         tally.book("below the foot", landed[~wanted & under[k]])
         tally.book("forward outside target", landed[~wanted & ~under[k]])
-        tally.designed += float(np.sum(landed[wanted & designed[k]])) * tally.scale
+        tally.designed += float(np.sum(landed[wanted & designed[k]]))
         tally.drift = max(tally.drift, float(np.abs(arrival.skewness - skew[k]).max()))
         tally.land(arrival, landed)

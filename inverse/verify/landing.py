@@ -112,16 +112,16 @@ def _widening(edge, steps, end=0.5 * np.pi, growth=1.12):
             width = min(width * growth, end / 30.0)
         grid.append(grid[-1] + width)
     grid[-1] = end
-    if len(grid) > 2 and grid[-1] - grid[-2] < 0.3 * (grid[-2] - grid[-3]):
-        del grid[-2]
+    if grid[-2] != edge and grid[-1] - grid[-2] < 0.3 * (grid[-2] - grid[-3]):
+        del grid[-2]  # no sliver at the horizon
     return np.array(grid)
 
 
 class Tally:
-    """Sums of one replicate. ``scale`` turns weights into fractions of the emitted flux."""
+    """Sums of weights of one replicate; ``close`` turns them into fractions of the emitted flux."""
 
-    def __init__(self, grids, scale):
-        self.grids, self.scale = grids, scale
+    def __init__(self, grids):
+        self.grids, self.emitted = grids, 0.0
         self.accounts = dict.fromkeys(ACCOUNTS, 0.0)
         self.paths = {}
         self.designed = 0.0
@@ -133,19 +133,18 @@ class Tally:
         self.drift = 0.0
 
     def book(self, account, weight):
-        self.accounts[account] += float(np.sum(weight)) * self.scale
+        self.accounts[account] += float(np.sum(weight))
 
     def book_roads(self, road, code, weight):
         """Add the weights to the paths; returns (k,) bool, True on designed roads."""
         codes, which = np.unique(code, return_inverse=True)
         words = [road.words(c) for c in codes]
         for name, amount in zip(words, np.bincount(which, weight, len(codes))):
-            self.paths[name] = self.paths.get(name, 0.0) + float(amount) * self.scale
+            self.paths[name] = self.paths.get(name, 0.0) + float(amount)
         return np.isin(words, DESIGNED)[which] if len(code) else np.zeros(0, bool)
 
     def land(self, arrival, weight):
         """Histograms of light that reached the outer medium going forward."""
-        weight = weight * self.scale
         polar = np.arctan2(np.hypot(*arrival.direction[:, :2].T), arrival.direction[:, 2])
         self.beam += np.histogram(arrival.theta, self.grids.beam, weights=weight)[0]
         self.far += np.histogram(polar, self.grids.beam, weights=weight)[0]
@@ -156,6 +155,16 @@ class Tally:
         seen = np.all((cell >= 0) & (cell < len(grid) - 1), axis=1)
         index = cell[seen, 1] * (len(grid) - 1) + cell[seen, 0]  # rows along y
         self.spot += np.bincount(index, weight[seen], self.spot.size).reshape(self.spot.shape)
+
+    def close(self):
+        """Divide every sum by the emitted one."""
+        for book in (self.accounts, self.paths):
+            for name in book:
+                book[name] /= self.emitted
+        self.designed /= self.emitted
+        for histogram in (self.beam, self.far, self.inner, self.spot):
+            histogram /= self.emitted
+        return self
 
 
 def gather(tallies, flux, rays):

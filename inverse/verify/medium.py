@@ -33,14 +33,14 @@ def check(surroundings, target, top):
     port = surroundings.port
     if port is None and surroundings.index != 1.0:
         raise ValueError(
-            f"{surroundings.name} of index {surroundings.index} needs a port: the lens stands in air; give its "
-            "index, thickness and gap"
+            f"{surroundings.name} of index {surroundings.index} needs a port, since the lens stands in air: "
+            "give its index, thickness and gap"
         )
     if port is not None and (port.gap < 0.0 or port.thickness < 0.0 or port.index < 1.0):
         raise ValueError(f"wanted a port with gap and thickness >= 0 and index >= 1, got {port}")
     edge = top + (port.gap + port.thickness if port else 0.0)
     if target.distance is not None and target.distance <= edge:
-        raise ValueError(f"target plane at {target.distance} mm lies within lens or port, which end at {edge:.4g} mm")
+        raise ValueError(f"target plane at {target.distance} mm lies inside lens or port (to {edge:.4g} mm)")
 
 
 def arrive(surroundings, target, top, origin, direction):

@@ -6,10 +6,10 @@ cos θ = (1 − u)^{1/(m+1)}; for a table, linear between its angles, F is known
 every interval, ∫ (a + b θ) sin θ dθ = −(a + b θ) cos θ + b sin θ, and is inverted by bisection.
 
 Under a dome (hemisphere of radius R and index n centred on the origin) the law holds inside the
-dome.  The ray runs to |p| = R, refracts into air and carries the weight T = 1 − R_Fresnel, zero
-where it is totally reflected.  Flux means what leaves the package, so the weights are divided by
-their mean: they average to 1.  Light that the dome's surface throws back is not followed: what it
-becomes inside the package is already in the flux on the data sheet, only its direction is not.
+dome.  The ray runs to |p| = R, refracts into air and carries the weight T = 1 − R_Fresnel; where it is
+totally reflected it is left out.  Flux means what leaves the package, so all fractions are of the
+sum of these weights.  Light that the dome's surface throws back is not followed: what it becomes
+inside the package is already in the flux on the data sheet, only its direction is not.
 """
 
 from dataclasses import dataclass
@@ -24,16 +24,16 @@ DIMENSIONS = 4  # uniform numbers a ray needs
 
 @dataclass(frozen=True)
 class Light:
-    """Rays in air at the emitter plane or on the dome; weights average to 1."""
+    """Rays in air at the emitter plane or on the dome; the emitted flux is the sum of the weights."""
 
     origin: np.ndarray  # (k, 3) mm
     direction: np.ndarray  # (k, 3) unit
-    weight: np.ndarray  # (k,)
+    weight: np.ndarray  # (k,) in (0, 1]
     row: np.ndarray  # (k,) the row of uniform numbers each came from
 
 
 def emit(emitter, uniform):
-    """One ray for each row of ``uniform`` (k, 4) in [0, 1); rays with weight 0 are left out.
+    """One ray for each row of ``uniform`` (k, 4) in [0, 1); totally reflected ones are left out.
 
     Raises ValueError for a die that reaches outside its dome or an unknown shape or law.
     """
@@ -100,7 +100,7 @@ def _table_angles(angles, values, u):
 def _through_dome(dome, origin, direction):
     reach = np.sqrt(np.max(np.sum(origin**2, 1)))
     if reach >= dome.radius:
-        raise ValueError(f"a die reaches {reach:.4g} mm from the axis, outside its dome of radius {dome.radius} mm")
+        raise ValueError(f"a die reaches {reach:.4g} mm from the axis, outside its dome of {dome.radius} mm")
     along = np.sum(origin * direction, 1)
     path = np.sqrt(along**2 + dome.radius**2 - np.sum(origin**2, 1)) - along
     surface = origin + path[:, None] * direction
@@ -108,9 +108,8 @@ def _through_dome(dome, origin, direction):
     cosine = -np.sum(direction * normal, 1)
     lost, cosine_behind = reflectance(cosine, dome.index, 1.0)
     keep = lost < 1.0
-    weight = (1.0 - lost) / np.mean(1.0 - lost)
     out = transmitted(direction, normal, cosine, cosine_behind, dome.index, 1.0)
-    return Light(surface[keep], out[keep], weight[keep], np.flatnonzero(keep))
+    return Light(surface[keep], out[keep], 1.0 - lost[keep], np.flatnonzero(keep))
 
 
 def swallowed(emitter, origin, direction):

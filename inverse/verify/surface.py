@@ -38,7 +38,8 @@ class Points:
 
     def __post_init__(self):
         if len(self.names) != len(self.curves) or not self.curves:
-            raise ValueError(f"wanted one name a curve, got {len(self.names)} names, {len(self.curves)} curves")
+            got = f"{len(self.names)} names, {len(self.curves)} curves"
+            raise ValueError(f"wanted one name a curve and at least one, got {got}")
         for name, rows in zip(self.names, self.curves):
             if rows.ndim != 2 or rows.shape[1] != 4 or len(rows) < 2:
                 raise ValueError(f"{name}: wanted (k >= 2, 4) numbers, got shape {rows.shape}")
@@ -72,14 +73,16 @@ class Points:
                 if place is None:
                     missing = [h for h in HEADER if h not in line]
                     if missing:
-                        raise ValueError(f"{path}: column {missing[0]} is missing; wanted {', '.join(HEADER)}")
+                        wanted = ", ".join(HEADER)
+                        raise ValueError(f"{path}: column {missing[0]} is missing; wanted {wanted}")
                     place = [line.index(h) for h in HEADER]
                     continue
                 try:
                     name, *numbers = (line[k] for k in place)
                     numbers = [float(x) for x in numbers]
                 except (IndexError, ValueError):
-                    raise ValueError(f"{path}:{reader.line_num}: wanted a name and 4 numbers, got {line}") from None
+                    where = f"{path}:{reader.line_num}"
+                    raise ValueError(f"{where}: wanted a name and 4 numbers, got {line}") from None
                 if not names or name != names[-1]:
                     names.append(name)
                     rows.append([])

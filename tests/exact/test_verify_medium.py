@@ -17,7 +17,7 @@ def tilted(degrees, azimuth=0.7):
 
 
 def test_a_flat_port_narrows_the_angles():
-    """5, 10, 20, 45° in air become 3.75, 7.48, 14.86, 32.03° in water (sin θ / 1.3334, to the digits given)."""
+    """5, 10, 20, 45° in air become 3.75, 7.48, 14.86, 32.03° in water (sin θ / 1.3334, to these digits)."""
     d = tilted([5, 10, 20, 45])
     theta = medium.arrive(WATER, FAR, 10.0, np.full((4, 3), 9.0), d).theta
     np.testing.assert_allclose(np.degrees(theta), [3.75, 7.48, 14.86, 32.03], atol=0.006)
@@ -39,7 +39,8 @@ def test_a_port_passes_the_product_of_its_faces():
 
 def test_a_plane_in_air_is_met_where_the_ray_points():
     """From (1, 2, 9) along 20° to z = 209: r by the tangent, θ = atan(r / 209)."""
-    out = medium.arrive(AIR, Target("spot", 0.1, distance=209.0), 9.5, np.array([[1.0, 2.0, 9.0]]), tilted(20.0))
+    wall = Target("spot", 0.1, distance=209.0)
+    out = medium.arrive(AIR, wall, 9.5, np.array([[1.0, 2.0, 9.0]]), tilted(20.0))
     x, y = np.array([1.0, 2.0]) + 200.0 * np.tan(np.radians(20.0)) * np.array([np.cos(0.7), np.sin(0.7)])
     np.testing.assert_allclose(out.place, [[x, y]], rtol=1e-12)
     assert out.theta[0] == pytest.approx(np.arctan(np.hypot(x, y) / 209.0), rel=1e-12)
@@ -48,7 +49,8 @@ def test_a_plane_in_air_is_met_where_the_ray_points():
 def test_a_plane_beyond_a_port_is_reached_by_three_straight_pieces():
     """From (0, 0, 7) at 30°: 5 mm of air to the port at 12, 6 mm of port, then water to z = 1000."""
     s = np.sin(np.radians(30.0))
-    legs = [5.0 * np.tan(np.arcsin(s)), 6.0 * np.tan(np.arcsin(s / 1.49253)), 982.0 * np.tan(np.arcsin(s / 1.3334))]
+    pieces = (5.0, 1.0), (6.0, 1.49253), (982.0, 1.3334)  # mm, index
+    legs = [length * np.tan(np.arcsin(s / index)) for length, index in pieces]
     where = np.array([[0.0, 0.0, 7.0]])
     out = medium.arrive(WATER, Target("spot", 0.1, distance=1000.0), 10.0, where, tilted(30.0))
     assert np.hypot(*out.place[0]) == pytest.approx(sum(legs), rel=1e-12)
@@ -57,13 +59,15 @@ def test_a_plane_beyond_a_port_is_reached_by_three_straight_pieces():
 def test_the_far_field_picture_keeps_angle_and_azimuth():
     """Place is θ in the direction of the azimuth, also on the axis."""
     place = medium.arrive(AIR, FAR, 0.0, np.zeros((2, 3)), np.vstack([tilted(25.0), tilted(0.0)])).place
-    np.testing.assert_allclose(place, np.radians([[25.0 * np.cos(0.7), 25.0 * np.sin(0.7)], [0.0, 0.0]]), atol=1e-15)
+    wanted = np.radians([[25.0 * np.cos(0.7), 25.0 * np.sin(0.7)], [0.0, 0.0]])
+    np.testing.assert_allclose(place, wanted, atol=1e-15)
 
 
 def test_skewness_passes_the_port_unchanged():
     """n (x d_y − y d_x) in water equals x d_y − y d_x in air."""
     rng = np.random.default_rng(2)
-    o, d = rng.normal(size=(50, 3)), np.vstack([tilted(a, b) for a, b in zip(rng.uniform(0, 80, 50), rng.random(50))])
+    o, angles = rng.normal(size=(50, 3)), zip(rng.uniform(0, 80, 50), rng.random(50))
+    d = np.vstack([tilted(*a) for a in angles])
     out = medium.arrive(WATER, Target("spot", 0.1, distance=500.0), 5.0, o, d)
     np.testing.assert_allclose(out.skewness, o[:, 0] * d[:, 1] - o[:, 1] * d[:, 0], atol=1e-12)
 
@@ -71,8 +75,8 @@ def test_skewness_passes_the_port_unchanged():
 @pytest.mark.parametrize("surroundings, target, complaint", [
     (Surroundings("water", 1.333), FAR, "needs a port"),
     (Surroundings("water", 1.333, Port(1.5, 5.0, -1.0)), FAR, "gap and thickness >= 0"),
-    (AIR, Target("spot", 0.1, distance=9.0), "lies within lens or port"),
-    (WATER, Target("spot", 0.1, distance=17.0), "lies within lens or port"),
+    (AIR, Target("spot", 0.1, distance=9.0), "lies inside lens or port"),
+    (WATER, Target("spot", 0.1, distance=17.0), "lies inside lens or port"),
 ])
 def test_requests_that_make_no_sense_are_refused(surroundings, target, complaint):
     """Water without a port, a port inside the lens, a target plane inside lens or port."""

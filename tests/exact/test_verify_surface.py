@@ -29,13 +29,13 @@ def off_ellipse(count, a=6.0, b=4.0):
 
 
 def test_400_points_a_curve_hold_a_micron_thousandth_and_a_microradian():
-    """An ellipse 12 mm wide is met to 1e-6 mm and 1e-6 rad everywhere between its 400 points (closed form)."""
+    """An ellipse 12 mm wide is met to 1e-6 mm and 1e-6 rad between its 400 points (closed form)."""
     distance, slope = off_ellipse(400)
     assert distance < 1e-6 and slope < 1e-6
 
 
 def test_the_interpolation_is_of_fourth_order():
-    """Doubling the points divides the error by 2⁴ in place and 2³ in slope (de Boor, chapter IV, from memory)."""
+    """Twice the points divide the error by 2⁴ in place and 2³ in slope (de Boor, chapter IV, from memory)."""
     coarse, fine = off_ellipse(51), off_ellipse(101)
     orders = np.log2(np.array(coarse) / np.array(fine))
     # Fitted on one doubling: the next term of the error shifts the order by about the step, 1/50.

@@ -41,7 +41,7 @@ def test_without_a_lens_sin_squared_lands_inside(degrees):
 
 
 def test_without_a_lens_the_beam_is_lambertian_in_candela():
-    """I(θ) = Φ/π cos θ over every ring, within 4 of its own standard errors nearly everywhere, and a few rays."""
+    """I(θ) = Φ/π cos θ over every ring, within 4 of its own standard errors almost always."""
     out = fly(None, SMALL, 1.0, 0.0, AIR, Target("spot", 0.5), 4 * RAYS)
     c = np.cos(out.beam.edges)
     ring = SMALL.flux / np.pi * 0.5 * (c[1:] + c[:-1])  # mean of cos θ over the solid angle of the ring
@@ -55,7 +55,8 @@ def test_without_a_lens_the_beam_is_lambertian_in_candela():
 
 def test_a_tiny_die_lights_a_near_wall_by_the_square_of_the_distance():
     """A tiny die 100 mm from a wall: r < d tan θ gets sin²θ; lux on the axis is Φ/(π d²)."""
-    out = fly(None, Emitter((Disk(1e-3),), flux=100.0), 1.0, 0.0, AIR, Target("spot", 0.3, distance=100.0), 4 * RAYS)
+    led, wall = Emitter((Disk(1e-3),), flux=100.0), Target("spot", 0.3, distance=100.0)
+    out = fly(None, led, 1.0, 0.0, AIR, wall, 4 * RAYS)
     assert agrees(out.share, out.share_se, np.sin(0.3) ** 2)
     middle = out.spot.brightness.shape[0] // 2
     patch = out.spot.brightness[middle - 6 : middle + 7, middle - 6 : middle + 7].mean()
@@ -93,7 +94,8 @@ def test_a_plane_slab_passes_with_all_its_multiples(index, passes):
     out = fly(Points.of(cylinder(40.0, 2.0, 4.0)), pencil, index, 0.0, AIR, Target("spot", 0.1), 4 * RAYS)
     # The table is rounded to 5e-6.
     assert abs(out.share - passes) <= 4.0 * out.share_se + 5e-6
-    assert out.designed_paths_share == pytest.approx(4 * index**2 * 4 / (1 + index) ** 4, abs=4 * out.share_se)
+    straight = (1.0 - ((index - 1.0) / (index + 1.0)) ** 2) ** 2  # without the multiples
+    assert agrees(out.designed_paths_share, out.designed_paths_share_se, straight)
 
 
 def fresnel_flux(low, high):
@@ -105,9 +107,11 @@ def fresnel_flux(low, high):
 
 
 def test_a_black_plate_sorts_the_light_into_known_accounts():
-    """A point 2 mm under an absorbing plate of radius 1: what misses it (cos² of its rim's angle) has left below
-    the foot; what its face mirrors falls at twice the radius, on the board up to the plate's own
-    radius, beside it beyond; the rest is absorbed."""
+    """A point 2 mm under an absorbing plate of radius 1.
+
+    What misses it (cos² of its rim's angle) has left below the foot; what its face mirrors falls at
+    twice the radius, on the board up to the plate's own radius, beside it beyond; the rest is absorbed.
+    """
     plate = Points.of(cylinder(1.0, 2.0, 3.0))
     out = fly(plate, POINT, PMMA, 1e3, AIR, Target("spot", 0.01), 4 * RAYS)
     rim, half = np.arctan(0.5), np.arctan(0.25)
@@ -164,7 +168,7 @@ def test_index_one_is_no_lens():
 
 
 def test_an_index_almost_one_is_almost_no_lens():
-    """n = 1 + 1e-7 turns rays by at most some 1e-6 rad and sends back 1e-14: shares move by less than 1e-4."""
+    """n = 1 + 1e-7 turns rays by some 1e-6 rad and sends back 1e-14: shares move by less than 1e-4."""
     target = Target("spot", 0.3)
     bare = fly(None, SMALL, 1.0, 0.0, AIR, target, RAYS)
     thin = fly(PART, SMALL, 1.0 + 1e-7, 0.0, AIR, target, RAYS)
@@ -184,7 +188,8 @@ def test_bulk_absorption_is_that_of_the_length_inside():
     """A pencil through 2 mm of plate loses 1 − exp(−μ d) of what enters, to first order in R."""
     pencil = Emitter((Disk(0.1),), law=CosinePower(2e5))
     out = fly(Points.of(cylinder(40.0, 2.0, 4.0)), pencil, 1.0, 0.1, AIR, Target("spot", 0.1), RAYS)
-    assert out.ledger["absorbed in the material"] == pytest.approx(1.0 - np.exp(-0.2), rel=1e-5)  # cos θ > 1 − 1e-5
+    taken = out.ledger["absorbed in the material"]
+    assert taken == pytest.approx(1.0 - np.exp(-0.2), rel=2e-5)  # paths are longer by 1/cos θ, some 5e-6
 
 
 def test_a_port_costs_its_two_faces_and_narrows_the_beam():
