@@ -85,8 +85,10 @@ class Launcher:
             return edge_height / jnp.sqrt(edge_height * edge_height + reach * reach)
 
         def excess(c):
+            # times the sine: the height alone grows without bound near the axis, and secants crawl
             p, d, _ = self.ray(rho, turn, c)
-            return p[2] + intersect.to_cylinder(p, d, edge_radius) * d[2] - edge_height
+            sine = jnp.sqrt(d[0] * d[0] + d[1] * d[1] + TINY)
+            return (p[2] - edge_height + intersect.to_cylinder(p, d, edge_radius) * d[2]) * sine
 
         zero = jnp.zeros_like(rho)
         return bracketed_root(excess, zero, zero + (1.0 - 1e-12))
