@@ -6,7 +6,7 @@ import math
 import numpy as np
 
 from inverse import limit, photometry
-from inverse.outcome import BeyondLimit, Exit, Stop
+from inverse.outcome import Exit, Stop
 from inverse.photometry import FarField
 from inverse.profile import gauge
 from inverse.target import Target
@@ -28,38 +28,6 @@ def stamp(brief):
         "jax": version("jax"),
         "numpy": version("numpy"),
         "precision": "float64",
-    }
-
-
-def limits(brief, box, target, found):
-    """The ``limit`` block: a ``Bound`` and the answers that go with it."""
-    lens = (brief.emitter, target, brief.surroundings, brief.index)
-    answers = {}
-    for key, ask, convert in (
-        ("smallest_aperture_mm", lambda: limit.smallest_radius(*lens, target.share, height=box.height), lambda r: 2 * r),
-        (
-            "narrowest_half_angle_deg",
-            lambda: limit.narrowest_half_angle(
-                brief.emitter, box.radius, brief.surroundings, brief.index, target.share
-            ),
-            deg,
-        ),
-    ):
-        try:
-            answers[key] = float(convert(ask()))
-        except BeyondLimit:
-            answers[key] = None
-    return {
-        "ceiling": found.ceiling,
-        "ceiling_with_losses": found.ceiling_with_losses,
-        "etendue_ratio": found.etendue_ratio,
-        "skewness_ceiling": found.skewness_ceiling,
-        "brightness_ceiling": found.brightness_ceiling,
-        "transmission": found.transmission,
-        **answers,
-        "largest_candela": found.largest_candela,
-        "source_etendue_mm2sr": found.source_etendue,
-        "target_etendue_mm2sr": found.target_etendue,
     }
 
 
@@ -191,7 +159,7 @@ def figures(brief, box, target, bound, landing, tracer, agreement, section):
             "grid": np.round(landing.spot.brightness, 4).tolist(),
             "distance_mm": target.distance,
         }
-        | ({"peak_lx": float(landing.spot.brightness.max())} if landing.spot.in_plane else {}),
+        | {"peak_lx" if landing.spot.in_plane else "peak_cd": float(landing.spot.brightness.max())},
         "part": {
             "diameter_mm": 2 * float(outline[:, 0].max()),
             "height_mm": float(np.ptp(outline[:, 1])),
@@ -211,14 +179,18 @@ def verdict(result, stop, holds):
     missing, got, wanted = [], result["got"], result["asked"]
     if wanted["share"] is not None and got["share"] < wanted["share"] - 2 * got["share_se"]:
         missing.append(
-            f"share {got['share']:.4f} in the target, {wanted['share'] - got['share']:.4f} less than the "
-            f"{wanted['share']:g} asked for"
+            f"{got['share']:.2%} of the light in the target, {wanted['share'] - got['share']:.2%} less than the "
+            f"{wanted['share']:.4g} asked for"
         )
+    if wanted.get("original"):
+        missing.append("the beam as asked is beyond the limit; this is the nearest possible one")
     if got.get("shape_deviation", 0.0) > SHAPE_TOLERANCE:
         missing.append(
             f"the beam differs from the wanted shape by {got['shape_deviation']:.1%} of its peak (rms), "
             f"more than {SHAPE_TOLERANCE:.0%}"
         )
+    if "lens.json" in result["files"] and any("no sound solid" in note for note in result.get("notes", ())):
+        missing.append("lens.step: the section makes no sound solid, see the notes")
     for row in result["constraints"]:
         if not row["met"]:
             bound = row["lower"] if row["lower"] is not None else row["upper"]

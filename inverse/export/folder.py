@@ -4,7 +4,7 @@ from pathlib import Path
 
 from inverse.export import dxf, lens_json, step, table
 from inverse.export.atomic import write_text
-from inverse.export.cad import CadMissing
+from inverse.export.cad import CadMissing, SolidError
 from inverse.formats import eulumdat, lm63
 from inverse.formats.nameplate import Nameplate
 
@@ -32,7 +32,7 @@ def hand_over(
     ``density`` g/mm³ or None, ``index`` at ``wavelength`` µm, ``stamp`` word → value, ``far_field`` a
     `FarField`, ``flux`` lm the LED emits, ``date`` ISO, ``aperture_radius`` mm, ``lamp`` the LED in words,
     ``watts`` electrical (0 = not stated), ``run`` JSON-ready facts of the search kept in lens.json.
-    Raises SolidError when the section makes no sound solid, OSError.
+    A section that makes no sound solid is noted. Raises OSError.
     Without the CAD extra, and where the beam does not fit a format, the file is left out with a note.
     """
     folder = Path(folder)
@@ -70,6 +70,8 @@ def hand_over(
             date=date,
         )
         files.append("lens.step")
+    except SolidError as fault:
+        notes.append(f"lens.step was not written, no sound solid: {fault}")
     except CadMissing as fault:
         notes.append(_left_out(folder / "lens.step", fault))
     dxf.write(

@@ -3,9 +3,11 @@
 from inverse.limit.bound import (
     NEARLY_ALL,
     Bound,
+    answers,
     bound,
     ceiling_at,
     narrowest_half_angle,
+    nearest_target,
     refuse_impossible,
     smallest_radius,
 )
@@ -13,9 +15,11 @@ from inverse.limit.bound import (
 __all__ = [
     "NEARLY_ALL",
     "Bound",
+    "answers",
     "bound",
     "ceiling_at",
     "narrowest_half_angle",
+    "nearest_target",
     "refuse_impossible",
     "smallest_radius",
 ]

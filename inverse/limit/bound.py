@@ -19,7 +19,7 @@ the last per cent of a square die's light takes far more room than its étendue.
 """
 
 import math
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 
@@ -236,3 +236,49 @@ def refuse_impossible(emitter, radius, height, target, surroundings, index):
         f"{found.ceiling_with_losses:.4g} through uncoated faces. "
         + ", ".join(advice) + "."
     )
+
+
+def nearest_target(emitter, radius, height, target, surroundings, index):
+    """``target`` itself when its share is possible, else the nearest one: the narrowest beam that can hold the share.
+
+    Where no beam can (the faces alone lose too much), or for a shaped beam, the target stays and
+    the share is left open.
+    """
+    found = bound(emitter, radius, height, target, surroundings, index)
+    if target.share is None or target.share <= found.ceiling * transmission.faces_with_returns(index, surroundings):
+        return target
+    open_share = replace(target, share=None)
+    if target.kind == "shape":
+        return open_share
+    try:
+        wider = narrowest_half_angle(emitter, radius, surroundings, index, target.share)
+    except BeyondLimit:
+        return open_share
+    return replace(open_share, half_angle=max(wider, target.half_angle))
+
+
+def answers(found, emitter, radius, height, target, surroundings, index):
+    """The ``limit`` block of result.json: a ``Bound`` and the practical questions, None where nothing is enough."""
+
+    def ask(question):
+        try:
+            return float(question())
+        except BeyondLimit:
+            return None
+
+    lens = (emitter, target, surroundings, index, target.share)
+    smallest = ask(lambda: 2 * smallest_radius(*lens, height=height))
+    narrowest = ask(lambda: deg(narrowest_half_angle(emitter, radius, surroundings, index, target.share)))
+    return {
+        "ceiling": found.ceiling,
+        "ceiling_with_losses": found.ceiling_with_losses,
+        "etendue_ratio": found.etendue_ratio,
+        "skewness_ceiling": found.skewness_ceiling,
+        "brightness_ceiling": found.brightness_ceiling,
+        "transmission": found.transmission,
+        "smallest_aperture_mm": smallest,
+        "narrowest_half_angle_deg": narrowest,
+        "largest_candela": found.largest_candela,
+        "source_etendue_mm2sr": found.source_etendue,
+        "target_etendue_mm2sr": found.target_etendue,
+    }

@@ -189,8 +189,8 @@ def search(result):
     return [
         {
             "family": str(s.get("family", "")),
-            "start": _share(s.get("start_share")),
-            "end": _share(s.get("end_share")),
+            "start": _share(s.get("start_score")),
+            "end": _share(s.get("end_score")),
             "kept": bool(s.get("kept")),
         }
         for s in starts[:STARTS]

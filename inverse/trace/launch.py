@@ -131,7 +131,7 @@ def bracketed_root(excess, low, high):
     def narrow(i, state):
         lo, hi, at_lo, at_hi, side = state
         secant = (lo * at_hi - hi * at_lo) / jnp.where(inside, at_hi - at_lo, 1.0)
-        c = jnp.where(i < HALVINGS, 0.5 * (lo + hi), secant)
+        c = jnp.where(inside & (i >= HALVINGS), secant, 0.5 * (lo + hi))
         value = held(c)
         above = value > 0.0
         # Illinois: an end that has stayed twice counts half, so both ends close in
@@ -147,7 +147,8 @@ def bracketed_root(excess, low, high):
 
     ends = (lo, hi, jnp.where(inside, at_lo, -1.0), jnp.where(inside, at_hi, 1.0), jnp.zeros_like(lo))
     lo, hi, at_lo, at_hi, _ = jax.lax.fori_loop(0, HALVINGS + SECANTS, narrow, ends)
-    c = hold(jnp.where(jnp.abs(at_lo) < jnp.abs(at_hi), lo, hi))
+    # where there is no root the unused branch must stay finite too: its gradient is multiplied by zero
+    c = hold(jnp.where(inside, jnp.where(jnp.abs(at_lo) < jnp.abs(at_hi), lo, hi), 0.5 * (low + high)))
     value, slope = jax.jvp(excess, (c,), (jnp.ones_like(c),))
     slope = hold(slope)
     root = c - value / jnp.where(slope > 0.0, slope, 1.0)

@@ -207,9 +207,9 @@ def result():
             "target_etendue_mm2sr": 9.87,
         },
         "search": [
-            {"family": "edge ray, stepped exit", "start_share": 0.600, "end_share": 0.8133, "kept": True},
-            {"family": "edge ray, single exit", "start_share": 0.610, "end_share": 0.791, "kept": False},
-            {"family": "flux map, single exit", "start_share": 0.580, "end_share": 0.740, "kept": False},
+            {"family": "edge ray, stepped exit", "start_score": 0.600, "end_score": 0.8133, "kept": True},
+            {"family": "edge ray, single exit", "start_score": 0.610, "end_score": 0.791, "kept": False},
+            {"family": "flux map, single exit", "start_score": 0.580, "end_score": 0.740, "kept": False},
         ],
         "got": {
             "share": 0.8132,

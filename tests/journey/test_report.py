@@ -223,7 +223,7 @@ def test_the_same_run_gives_the_same_bytes(folder, tmp_path):
 def test_text_from_outside_is_escaped(page):
     """Markup in a name, a family, a place, a path, a stage or a file name is shown, never obeyed."""
     evil = "<script>alert('&')</script>"
-    found = changed(name=evil, search=[{"family": evil, "start_share": 0.1, "end_share": 0.2, "kept": True}])
+    found = changed(name=evil, search=[{"family": evil, "start_score": 0.1, "end_score": 0.2, "kept": True}])
     found["constraints"][0].update(name=evil, where=evil)
     found["paths"] = {evil: 0.5}
     found["verdict"]["missing"] = [evil]
@@ -444,7 +444,7 @@ def test_notes_of_the_run_are_printed(words):
 
 def test_many_starts_are_counted(words):
     """Ten starts are told one by one, the others counted."""
-    starts = [{"family": f"f{i}", "start_share": 0.5, "end_share": 0.6, "kept": i == 0} for i in range(13)]
+    starts = [{"family": f"f{i}", "start_score": 0.5, "end_score": 0.6, "kept": i == 0} for i in range(13)]
     text = words({**FULL, "search": starts}).text
     assert "f9" in text and "f10" not in text and "and 3 more." in text
 
