@@ -7,6 +7,7 @@ from inverse import limit
 from inverse.outcome import BriefError, Stop
 
 ROOM = 1.5  # clear radius over the least one: refined lenses come within 1 % of the limit there (reference k = 1.5)
+PLACE = 2.2  # clear radius over pocket and wall: a flank needs about as much again
 UNDATED = "2000-01-01"  # files carry no clock: equal briefs give equal bytes
 
 # The stages are imported where they are used: `inverse limit` answers in a second and needs none of them.
@@ -34,10 +35,11 @@ def design(brief, folder, *, watch, resume=False, nearest=False) -> dict:
     write_text(run.folder / "brief.toml", brief.resolved)
     scene = farfield.scene(brief.emitter, box, brief.index, brief.absorption, brief.surroundings, target)
     rules = tuple(moulding.limits(box, brief.emitter))
-    problem = merit.Problem(scene, rules, bound.ceiling_with_losses)
+    problem = merit.Problem(scene, rules, bound.ceiling_with_losses, bound.etendue_ratio)
     found = search.find(problem, brief.plan, brief.index, record=run.record, watch=watch, memory=run)
     section = lenses.section(found.lens, box)
     tracer = found.score.share(found.lens, brief.plan.seed)
+    search.forget_compiled()  # the verifier and the CAD kernel need the memory
     context = {
         "search": [
             {"family": t.recipe.words, "start_score": t.start, "end_score": t.score, "rounds": t.rounds, "kept": i == 0}
@@ -151,7 +153,9 @@ def _sized(brief, target):
     least = limit.smallest_radius(
         brief.emitter, target, brief.surroundings, brief.index, target.share, height=box.height
     )
-    return replace(box, radius=min(box.radius, ROOM * least))
+    emitter = brief.emitter
+    pocket = PLACE * (emitter.keep_out + box.clearance + box.wall)
+    return replace(box, radius=min(box.radius, max(ROOM * least, pocket)))
 
 
 def _from_solid(folder, section, watch):

@@ -45,6 +45,7 @@ class Problem:
     scene: farfield.Scene
     limits: tuple  # moulding.Limit
     best_share: float  # ceiling × transmission
+    room: float = 1.0  # étendue of the target over that of the source
     cumulative_weight: float = 20.0
     ripple_weight: float = 0.3
 

@@ -23,6 +23,7 @@ from inverse.seed import flux_map
 from inverse.trace import farfield
 
 SCORE_RAYS = 4096
+ROOM_FOR_ONE = 1.8  # étendue ratio from which a single exit face comes within 1 % of the limit (measured: k = 1.5)
 STEP_PAYS = 0.01  # a step in the exit face must earn this much of the ceiling: it is one more edge to mould
 
 
@@ -62,12 +63,13 @@ class Found:
     score: "Scorer"
 
 
-def recipes(plan: Plan, target):
-    """The families, all of them."""
+def recipes(plan: Plan, target, room=1.0):
+    """The families, all of them. ``room`` is the étendue ratio: with plenty, a stepped face is not tried."""
     pockets, feet = (1.0, 1.25, 1.6, 2.1, 2.8), (1.0, 1.6, 2.6, 4.2, 7.0)
     edges = (0.0, 0.5, 1.0) if target.kind == "spot" else (0.0,)
     crossings = (False, True) if target.kind == "shape" else (False,)
-    drops = {"single": (0.0,), "stepped": (-0.05, 0.05)}.get(plan.exit_face, (0.0, -0.05, 0.05))
+    single = plan.exit_face == "single" or (plan.exit_face == "auto" and room >= ROOM_FOR_ONE)
+    drops = (0.0,) if single else (-0.05, 0.05) if plan.exit_face == "stepped" else (0.0, -0.05, 0.05)
     return [flux_map.Recipe(*r) for r in product(pockets, feet, edges, crossings, drops)]
 
 
@@ -102,7 +104,7 @@ class Scorer:
 def screen(problem, plan, index, score):
     """Build and score every recipe; best first."""
     scene, trials = problem.scene, []
-    for recipe in recipes(plan, scene.target):
+    for recipe in recipes(plan, scene.target, problem.room):
         sized = replace(recipe, drop=recipe.drop * scene.box.radius)
         lens = flux_map.build(sized, scene.emitter, scene.box, index, scene.target, scene.surroundings.index)
         if lens is not None:
@@ -229,3 +231,8 @@ def find(problem, plan: Plan, index, *, record, watch, memory=None) -> Found:
     trials = _settle(trials)
     others = sorted([t for t in trials[1:] + ended if t.rounds], key=lambda t: -t.score)
     return Found(trials[0].lens, [trials[0], *others], screened, stop, score)
+
+
+def forget_compiled():
+    """Give back the memory of the compiled tracer (some hundreds of MB)."""
+    jax.clear_caches()

@@ -142,9 +142,13 @@ def flank(q, inside, weight, shape, glass, blur):
         _, safe = _upward(out)
         past = _soft(_radius_at(f, safe, corner_z) - corner_r, blur)
         past = jnp.where(f[2] < corner_z, past, 1.0)
+        # a curved wall can send rays over the rim from between two that meet the flank
+        below = _soft(shape.rim_height - f[2], blur)
+        weight, over = weight * below, weight * (1.0 - below)
         lost = {
             "absorbed in the material": weight * (1.0 - path),
             "flank leak": weight * path * (1.0 - kept),
+            "over the rim": over,
             "back into the pocket": weight * path * kept * (1.0 - past),
         }
         return f, out, weight * path * kept * past, lost, residual
