@@ -66,9 +66,13 @@ def scene(emitter=BARE, absorption=2e-3, surroundings=AIR, target="spot", box=BO
     return farfield.scene(emitter, box, PMMA, absorption, surroundings, TARGETS[target])
 
 
-@functools.cache
 def tracer(emitter=BARE, box=BOX, absorption=2e-3):
     """Compiled ``trace(lens, u, blur, index)`` of an emitter in a box; port and target come after it."""
+    return _tracer(emitter, box, absorption)
+
+
+@functools.cache
+def _tracer(emitter, box, absorption):
     given = scene(emitter, absorption, box=box)
 
     def run(lens, u, blur, index):
@@ -77,16 +81,15 @@ def tracer(emitter=BARE, box=BOX, absorption=2e-3):
     return jax.jit(run)
 
 
+def problem(emitter=BARE, target="spot", best=0.9):
+    return merit.Problem(scene(emitter, target=target), tuple(moulding.limits(BOX, emitter)), best)
+
+
 def share(lens, given, u, *, index=PMMA, edge=None):
     """Sharp-edged share inside the target (or ``edge``, rad) by the designed roads."""
     beam, _, _ = tracer(given.emitter, given.box, given.glass.absorption)(lens, u, 1e-6, index)
     q, weight, _ = farfield.land(beam, given, farfield.highest(lens, given.box))
     return float(jnp.sum(jnp.where(q < np.tan(edge or given.target.half_angle) ** 2, weight, 0.0)))
-
-
-@functools.cache
-def problem(emitter=BARE, target="spot", best=0.9):
-    return merit.Problem(scene(emitter, target=target), tuple(moulding.limits(BOX, emitter)), best)
 
 
 @functools.cache
