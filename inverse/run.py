@@ -34,7 +34,8 @@ class Run(Memory):
         if not path.is_file():
             raise BriefError([f"{path}: no checkpoint to resume from. Leave out --resume."])
         try:
-            with np.load(path, allow_pickle=False) as saved:
+            # opened here: NumPy leaves a file it cannot read open
+            with open(path, "rb") as file, np.load(file, allow_pickle=False) as saved:
                 if str(saved["digest"]) != self.digest:
                     raise BriefError([f"{path}: made from another brief. Leave out --resume to start afresh."])
                 for name in saved.files:
@@ -42,7 +43,7 @@ class Run(Memory):
                         continue
                     job, part = name.rsplit("/", 1)
                     self.jobs.setdefault(job, {})[part] = saved[name]
-        except (ValueError, KeyError, OSError, zipfile.BadZipFile) as fault:
+        except (ValueError, KeyError, OSError, EOFError, zipfile.BadZipFile) as fault:
             if isinstance(fault, BriefError):
                 raise
             raise BriefError([f"{path}: not a checkpoint of this version. Leave out --resume."]) from None
