@@ -20,7 +20,7 @@ QUARTER = points(256, 9)
 EVEN = jnp.concatenate([QUARTER] * 4).at[:, 2].set(points(1024, 10)[:, 2])
 LOSSES = {
     "under the foot", "entry reflection", "flank leak", "back into the pocket", "absorbed in the material",
-    "exit reflection", "into the step", "past the exit face",
+    "exit reflection", "into the step", "past the exit face", "over the rim",
 }  # fmt: skip
 
 
