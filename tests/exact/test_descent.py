@@ -61,16 +61,26 @@ def test_a_short_run_improves_the_lens(finished):
     assert all(np.isfinite(v) for r in rows for v in r.values() if isinstance(v, float))
 
 
+def test_every_chunk_draws_new_shifts(engine, finished):
+    """The key moves on with the state: no step meets the points of an earlier one."""
+    keys = [engine.start(seed_lens()).key, *(s.key for s in finished[2])]
+    assert len({tuple(np.asarray(k).tolist()) for k in keys}) == 3
+
+
 def test_the_log_shows_every_limit(finished):
     """One column a constraint, named as the moulder names it."""
     assert {r.name for r in moulding.limits(BOX, BARE)} <= set(finished[1][0])
 
 
-def test_simple_bounds_hold_at_every_state(engine, finished):
-    """Drafts of the pocket wall and the foot's width never fall below the envelope's, not even by rounding."""
-    for state in finished[2]:
-        lens = engine.lens(state.x)
-        assert float(lens.wall.min()) >= np.tan(BOX.draft) and float(lens.foot) >= BOX.wall
+def test_simple_bounds_hold_whatever_the_step(engine):
+    """Steps five times too large throw every number about; drafts and foot still end inside the envelope's."""
+    state = engine.start(seed_lens())
+    result = engine.run(state, Adam(50, rate=0.005, settle=False))
+    assert result.state.step == 50 and not same(result.lens, seed_lens())
+    assert float(result.lens.wall.min()) >= np.tan(BOX.draft) and float(result.lens.foot) >= BOX.wall
+    start = engine.start(replace(seed_lens(), foot=jnp.asarray(0.1), wall=0.0 * seed_lens().wall))
+    lens = engine.lens(start.x)
+    assert float(lens.wall.min()) >= np.tan(BOX.draft) and float(lens.foot) >= BOX.wall
 
 
 def test_the_same_seed_gives_the_same_lens_bit_for_bit(engine, finished):
