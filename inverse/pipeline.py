@@ -114,7 +114,7 @@ def _finish(brief, folder, box, target, section, context, rows, rays, watch):
         index=brief.index,
         wavelength=brief.wavelength,
         stamp=stamp,
-        far_field=result.far_field(landing.far_field),
+        far_field=result.far_field(landing, led.flux),
         flux=led.flux,
         date=UNDATED,
         aperture_radius=box.radius,

@@ -79,11 +79,27 @@ def constraints(section, box, led):
     return rows
 
 
-def far_field(beam):
-    """A Monte Carlo ``Beam`` as an intensity table that starts on the axis."""
+def far_field(landing, emitted):
+    """The Monte Carlo's far field as an intensity table that starts on the axis.
+
+    Straight lines between ring means do not keep the flux; the table is scaled so that it carries
+    what the ledger says goes forward.  ``emitted`` in lm.
+    """
+    beam = landing.far_field
     theta = np.concatenate([[0.0], beam.angle])
     lead = lambda v: np.concatenate([v[:1], v])
-    return FarField(theta, lead(beam.candela), lead(beam.candela_se))
+    forward = emitted * (landing.ledger["in target"] + landing.ledger["forward outside target"])
+    table = FarField(theta, lead(beam.candela), lead(beam.candela_se))
+    scale = forward / table.flux if table.flux > 0 else 1.0
+    return FarField(theta, scale * table.candela, scale * table.candela_se)
+
+
+def _photometry(brief, landing):
+    """The ``photometry`` block; figures that assume air are left open in water."""
+    block = photometry.figures(far_field(landing, brief.emitter.flux), brief.emitter.flux)
+    if brief.surroundings.name != "air":  # water absorbs and scatters: 2√I and I/d² do not hold
+        block |= {"beam_distance_m": None, "spots": []}
+    return block
 
 
 def wanted_candela(target: Target, angle, lumens):
@@ -108,7 +124,6 @@ def figures(brief, box, target, bound, landing, tracer, agreement, section):
     """The blocks that come from the verification: got, agreement, ledger, beam, encircled, spot, part."""
     share, se = tracer
     lumens = landing.share * brief.emitter.flux
-    field = far_field(landing.far_field)
     beam, ring = landing.beam, landing.encircled
     got = {
         "share": landing.share,
@@ -141,7 +156,7 @@ def figures(brief, box, target, bound, landing, tracer, agreement, section):
         "ledger": landing.ledger,
         "ledger_se": landing.ledger_se,
         "paths": landing.paths,
-        "photometry": photometry.figures(field, brief.emitter.flux),
+        "photometry": _photometry(brief, landing),
         "beam": {
             "angle_deg": deg(beam.angle).tolist(),
             "candela": beam.candela.tolist(),

@@ -154,7 +154,7 @@ class Mould(Section):
     draft_deg: _number(float, 0.1, 15.0, "deg") = _key("deg, least draft of every wall", 1.5)
     wall_mm: _number(float, 0.05, 50.0, "mm") = _key("mm, least wall thickness", 0.8)
     thickest_mm: _number(float, 0.1, 500.0, "mm") | None = _key("mm, greatest thickness along the axis")
-    corner_radius_mm: _number(float, 0.0, 10.0, "mm") = _key("mm, least radius of concave corners", 0.0)
+    corner_radius_mm: _number(float, 0.0, 10.0, "mm") = _key("mm, least radius of curvature of the optical curves", 0.0)
     rim_mm: _number(float, 0.05, 50.0, "mm") = _key("mm, thickness of the rim edge, or of the flange", 0.5)
     flange_mm: _number(float, 0.0, 100.0, "mm") = _key("mm, flange outside the clear diameter", 0.0)
 

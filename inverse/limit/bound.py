@@ -28,6 +28,7 @@ from inverse.outcome import BeyondLimit
 from inverse.target import Target
 from inverse.units import deg
 
+NARROW = math.radians(20.0)  # where returning light misses the target (measured on finished lenses)
 NEARLY_ALL = 0.99  # convention of this package
 HALVINGS = 24  # of a logarithmic interval of six decades: the answer is good to 1e-6 of itself
 CONES = 16  # inner cones at which a shaped target is checked
@@ -218,8 +219,7 @@ def refuse_impossible(emitter, radius, height, target, surroundings, index):
     The message names the nearest possible beams: a smaller share, a larger lens, a wider target.
     """
     found = bound(emitter, radius, height, target, surroundings, index)
-    returns = transmission.faces_with_returns(index, surroundings)
-    if target.share is None or target.share <= found.ceiling * returns:
+    if target.share is None or target.share <= _reachable(found, target, surroundings, index):
         return found
     advice = [f"Ask for a share of {found.ceiling_with_losses:.3f} or less"]
     try:
@@ -238,6 +238,17 @@ def refuse_impossible(emitter, radius, height, target, surroundings, index):
     )
 
 
+def _reachable(found, target, surroundings, index):
+    """The share above which a brief is refused.
+
+    Light that a face throws back can leave elsewhere, in wide beams into the target (measured: lenses
+    pass the figure of two faces from 25° on); only for narrow beams do the faces bound the share.
+    """
+    if target.half_angle > NARROW:
+        return found.ceiling
+    return found.ceiling * transmission.faces_with_returns(index, surroundings)
+
+
 def nearest_target(emitter, radius, height, target, surroundings, index):
     """``target`` itself when its share is possible, else the nearest one: the narrowest beam that can hold the share.
 
@@ -245,7 +256,7 @@ def nearest_target(emitter, radius, height, target, surroundings, index):
     the share is left open.
     """
     found = bound(emitter, radius, height, target, surroundings, index)
-    if target.share is None or target.share <= found.ceiling * transmission.faces_with_returns(index, surroundings):
+    if target.share is None or target.share <= _reachable(found, target, surroundings, index):
         return target
     open_share = replace(target, share=None)
     if target.kind == "shape":

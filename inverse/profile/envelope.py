@@ -15,5 +15,5 @@ class Envelope:
     wall: float = 0.8  # least wall thickness
     rim: float = 0.5  # thickness of the rim edge, or of the flange
     thickest: float | None = None  # greatest thickness along z, None = free
-    corner_radius: float = 0.0  # least radius of concave corners and curves, 0 = as sharp as the tool
+    corner_radius: float = 0.0  # least radius of curvature of the optical curves; joints stay sharp, 0 = free
     flange: float = 0.0  # width of the flange outside the clear radius, 0 = none

@@ -56,9 +56,13 @@ class _Outline:
         return np.concatenate([self.points[n] for n in names if n in self.points])
 
     def draft(self, name):
-        """Angle of each tangent from the axis: how far the curve leans from the pull direction."""
+        """How far each tangent leans from the pull direction, rad; negative where the curve is undercut.
+
+        Along the chain the wall runs down and outwards, flank, rim and flange edge up and outwards.
+        """
         t = self.tangents[name]
-        return np.arctan2(np.abs(t[:, 0]), np.abs(t[:, 1]))
+        outward = t[:, 0] if name in ("pocket wall", "flank", "rim", "flange edge") else np.abs(t[:, 0])
+        return np.arctan2(outward, np.abs(t[:, 1]))
 
 
 def _nearest(a, b):
@@ -117,6 +121,8 @@ def readings(section: Section, box: Envelope, emitter: Emitter) -> list[Reading]
     rim_height = float(edge[1] - flank[-1, 1])
     inner = flank[flank[-1, 0] - flank[:, 0] > 1.5 * rim_height]
     gap("flank to exit wall", inner, face)
+    value, point = _nearest(flank, face)
+    add("flank to exit edge", "mm", value, _place(point), lower=box.rim)
     add("rim thickness", "mm", rim_height, "rim" if not box.flange else "flange", lower=box.rim)
     foot = line.of("foot")
     add("foot width", "mm", foot[:, 0].max() - foot[:, 0].min(), "foot", lower=box.wall)

@@ -24,6 +24,8 @@ from inverse.profile.envelope import Envelope
 from inverse.profile.section import MECHANICAL, REFLECTING, REFRACTING, Curve, Section, line
 
 
+RIM_MARGIN = 1.03  # the rim is built this much thicker than asked, so that true distances to it hold as well
+
 class Graph(NamedTuple):
     """One curve: coefficients (c,) mm over [start, end] mm of the other coordinate."""
 
@@ -84,8 +86,8 @@ def shape(lens: Lens, box: Envelope) -> Shape:
     wall = Graph(jnp.asarray(box.foot, float), z_p, radii)
     centre = Graph(jnp.zeros(()), r_p, jnp.concatenate([lens.centre[:1], lens.centre, jnp.zeros(1)]) + z_p)
     edge = lens.exit[-1]
-    rim_radius = jnp.asarray(box.radius - (0.0 if box.flange else box.rim * tan_draft))
-    rim_height = edge - box.rim
+    rim_radius = jnp.asarray(box.radius - (0.0 if box.flange else RIM_MARGIN * box.rim * tan_draft))
+    rim_height = edge - RIM_MARGIN * box.rim
     foot_radius = radii[0] + lens.foot
     inner = jnp.concatenate([foot_radius[None], lens.flank, rim_radius[None]])
     flank = Graph(jnp.asarray(box.foot, float), rim_height, inner)
@@ -122,7 +124,7 @@ def section(lens: Lens, box: Envelope) -> Section:
     edge = last.points[0]
     if box.flange:
         outer = box.radius + box.flange
-        low = outer - box.rim * np.tan(box.draft)
+        low = outer - RIM_MARGIN * box.rim * np.tan(box.draft)
         rim = [
             line("flange underside", MECHANICAL, flank.points[-1], (low, flank.points[-1][1])),
             line("flange edge", MECHANICAL, (low, flank.points[-1][1]), (outer, edge[1])),

@@ -14,9 +14,11 @@ import jax.numpy as jnp
 import numpy as np
 
 from inverse.emitter import Emitter
+from inverse.profile import bspline
 from inverse.profile.envelope import Envelope
 from inverse.profile.lens import Lens, Shape, shape
 
+EDGE = 1.012  # the edge is steered to a little more than asked: its least distance lies between samples
 COARSE, DENSE = 48, 400  # samples a curve: in the refinement, in the final check
 
 
@@ -34,13 +36,13 @@ class Limit:
 
 
 class Cloud(NamedTuple):
-    """Samples of a shape, made once for all measures. Points (k, 2) in mm, slopes (k,)."""
+    """Samples of a shape, made once for all measures. Points (k, 2) in mm; slopes (j,) hold the extremes."""
 
     shape: Shape
     centre: jax.Array
-    pocket: jax.Array  # centre lens and wall
+    pocket: jax.Array  # from the axis over the corner to the mouth
     flank: jax.Array
-    outer: jax.Array  # exit face, or ring, step and disc
+    outer: jax.Array  # from the axis to the rim: exit face, or disc, step and ring
     wall_slope: jax.Array
     flank_slope: jax.Array
     face_slopes: jax.Array  # of all graphs over the radius
@@ -48,33 +50,43 @@ class Cloud(NamedTuple):
 
 def cloud(s: Shape, count) -> Cloud:
     """``count`` samples a curve."""
-    r, z, centre_slope = s.centre.sample(count)
+    r, z, _ = s.centre.sample(count)
     centre = jnp.stack([r, z], axis=-1)
-    height, radius, wall_slope = s.wall.sample(count)
+    height, radius, _ = s.wall.sample(count)
     wall = jnp.stack([radius, height], axis=-1)
-    height, radius, flank_slope = s.flank.sample(count)
+    height, radius, _ = s.flank.sample(count)
     flank = jnp.stack([radius, height], axis=-1)
-    r, z, face_slope = s.exit.sample(count)
-    outer, slopes = [jnp.stack([r, z], axis=-1)], [centre_slope, face_slope]
+    r, z, _ = s.exit.sample(count)
+    face, outer, slopes = jnp.stack([r, z], axis=-1), [], [_steepness(s.centre), _steepness(s.exit)]
     if s.disc is not None:
         w = jnp.linspace(0.0, 1.0, max(count // 4, 8))[:, None]
-        r, z, disc_slope = s.disc.sample(count)
+        r, z, _ = s.disc.sample(count)
         disc = jnp.stack([r, z], axis=-1)
-        outer += [outer[0][:1] * (1.0 - w) + disc[-1:] * w, disc]
-        slopes.append(disc_slope)
+        outer = [disc, disc[-1:] * (1.0 - w) + face[:1] * w]
+        slopes.append(_steepness(s.disc))
+    pocket = jnp.concatenate([centre, wall[::-1]])
     return Cloud(
-        s, centre, jnp.concatenate([centre, wall]), flank, jnp.concatenate(outer), wall_slope, flank_slope,
+        s, centre, pocket, flank, jnp.concatenate([*outer, face]), _steepness(s.wall), _steepness(s.flank),
         jnp.concatenate(slopes),
-    )  # fmt: skip
+    )
 
 
 def _squares(a, b):
-    """Squared distances (len(a), len(b))."""
+    """Squared distances of points ``a`` from points ``b``, (len(a), len(b))."""
     return (a[:, 0, None] - b[None, :, 0]) ** 2 + (a[:, 1, None] - b[None, :, 1]) ** 2
 
 
+def _to_chain(a, b):
+    """Squared distances of points ``a`` from the segments of the polyline ``b``, (len(a), len(b) − 1)."""
+    step = b[1:] - b[:-1]
+    x, z = a[:, 0, None] - b[None, :-1, 0], a[:, 1, None] - b[None, :-1, 1]
+    length = jnp.sum(step**2, axis=1) + 1e-18
+    w = jnp.clip((x * step[None, :, 0] + z * step[None, :, 1]) / length[None, :], 0.0, 1.0)
+    return (x - w * step[None, :, 0]) ** 2 + (z - w * step[None, :, 1]) ** 2
+
+
 def _gap(a, b):
-    return jnp.sqrt(jnp.min(_squares(a, b)) + 1e-18)
+    return jnp.sqrt(jnp.min(_to_chain(a, b)) + 1e-18)
 
 
 def side_wall(c):
@@ -91,7 +103,12 @@ def neck_wall(c):
     """Least distance between the flank and the exit side, away from the rim (which is thinner by right)."""
     s = c.shape
     inside = (s.rim_radius - c.flank[:, 0]) > 1.5 * (s.exit.coefficients[-1] - s.rim_height)
-    return jnp.sqrt(jnp.min(jnp.where(inside[:, None], _squares(c.flank, c.outer), 1e6)))
+    return jnp.sqrt(jnp.min(jnp.where(inside[:, None], _to_chain(c.flank, c.outer), 1e6)))
+
+
+def edge_wall(c):
+    """Least distance between the flank and the exit side everywhere, the rim's edge included."""
+    return _gap(c.flank, c.outer)
 
 
 def part_height(c):
@@ -153,9 +170,11 @@ def thickness(c):
     """Diameter of the largest circle in the section, its centre on a grid between pocket or flank and exit side."""
     s, every = c.shape, max(len(c.flank) // 48, 1)
     boundary = jnp.concatenate([c.pocket, c.flank, c.outer])
-    w = jnp.linspace(0.02, 0.98, 25)[:, None, None]
+    w = jnp.linspace(0.02, 0.98, 33)[:, None, None]
     grids = []
-    for low in (c.pocket[::every], c.flank[::every]):
+    foot = s.mouth_radius + (s.foot_radius - s.mouth_radius) * jnp.linspace(0.0, 1.0, 9)
+    foot = jnp.stack([foot, jnp.zeros_like(foot) + s.wall.start], axis=-1)
+    for low in (c.pocket[::every], foot, c.flank[::every]):
         top = s.exit.at(low[:, 0])[0]
         if s.disc is not None:
             top = jnp.where(low[:, 0] < s.exit.start, s.disc.at(low[:, 0])[0], top)
@@ -164,14 +183,30 @@ def thickness(c):
     return 2.0 * jnp.sqrt(jnp.max(jnp.min(_squares(jnp.concatenate(grids), boundary), axis=1)))
 
 
+def _bends(graph):
+    """Slope and second derivative at both ends of every span, (2 spans,) each: where they are extreme."""
+    A = bspline.pieces(graph.coefficients)
+    scale = A.shape[0] / (graph.end - graph.start)
+    slope = jnp.concatenate([A[:, 1], A[:, 1] + 2.0 * A[:, 2] + 3.0 * A[:, 3]]) * scale
+    return slope, jnp.concatenate([2.0 * A[:, 2], 2.0 * A[:, 2] + 6.0 * A[:, 3]]) * scale**2
+
+
+def _steepness(graph):
+    """Slopes at the ends of every span and at its stationary point, (3 spans,): the extremes are among them."""
+    A = bspline.pieces(graph.coefficients)
+    scale = A.shape[0] / (graph.end - graph.start)
+    flat = jnp.abs(A[:, 3]) < 1e-12
+    w = jnp.clip(jnp.where(flat, 0.0, -A[:, 2] / jnp.where(flat, 1.0, 3.0 * A[:, 3])), 0.0, 1.0)
+    slope = lambda w: A[:, 1] + w * (2.0 * A[:, 2] + w * 3.0 * A[:, 3])
+    return jnp.concatenate([slope(0.0), slope(w), slope(1.0)]) * scale
+
+
 def curve_radius(c):
-    """Least radius of curvature of the optical curves."""
-    s = c.shape
-    worst = jnp.zeros(())
+    """Least radius of curvature of the optical curves (the second derivative is extreme at knots)."""
+    s, worst = c.shape, jnp.zeros(())
     for g in [s.centre, s.wall, s.flank, s.exit] + ([s.disc] if s.disc is not None else []):
-        x, _, slope = g.sample(len(c.flank))
-        bend, mid = jnp.diff(slope) / jnp.diff(x), 0.5 * (slope[1:] + slope[:-1])
-        worst = jnp.maximum(worst, jnp.max(jnp.abs(bend) / (1.0 + mid * mid) ** 1.5))
+        slope, bend = _bends(g)
+        worst = jnp.maximum(worst, jnp.max(jnp.abs(bend) / (1.0 + slope * slope) ** 1.5))
     return 1.0 / jnp.maximum(worst, 1e-6)
 
 
@@ -181,13 +216,14 @@ def limits(box: Envelope, emitter: Emitter) -> list[Limit]:
         Limit("pocket to flank wall", "mm", side_wall, "pocket wall and flank", lower=box.wall),
         Limit("pocket to exit wall", "mm", top_wall, "centre lens and exit face", lower=box.wall),
         Limit("flank to exit wall", "mm", neck_wall, "flank and exit face inside the rim", lower=box.wall),
+        Limit("flank to exit edge", "mm", edge_wall, "flank and exit face up to the rim", lower=EDGE * box.rim),
         Limit("rim thickness", "mm", rim_thickness, "rim", lower=box.rim),
         Limit("foot width", "mm", foot_width, "foot", lower=box.wall),
         Limit("part height", "mm", part_height, "foot to highest point", upper=box.height),
         Limit("pocket clearance", "mm", clearance(emitter), "emitter to pocket", lower=box.clearance),
-        Limit("pocket draft", "rad", wall_draft, "pocket wall", lower=box.draft, scale=0.2),
-        Limit("flank draft", "rad", flank_draft, "flank", lower=box.draft, scale=0.2),
-        Limit("face draft", "rad", face_draft, "centre lens and exit face", lower=box.draft, scale=0.2),
+        Limit("pocket draft", "rad", wall_draft, "pocket wall", lower=box.draft, scale=0.05),
+        Limit("flank draft", "rad", flank_draft, "flank", lower=box.draft, scale=0.05),
+        Limit("face draft", "rad", face_draft, "centre lens and exit face", lower=box.draft, scale=0.05),
         Limit("line of sight", "1", bulge(emitter), "centre lens hides no pocket wall", lower=0.0, scale=0.5),
     ]
     if box.thickest is not None:

@@ -87,7 +87,7 @@ def evaluate(lens, problem: Problem, u, softness):
         merit = merit + problem.cumulative_weight * jnp.mean((got - wanted) ** 2)
         merit = merit + problem.ripple_weight * jnp.mean((rings - 1.0) ** 2)
     values = moulding.measured(lens, scene.box, problem.limits, moulding.COARSE)
-    closure = 1.0 - facts["forward"] - sum(facts["lost"].values())
+    closure = facts["launched"] - facts["forward"] - sum(facts["lost"].values())
     return merit, Figures(total, merit, values, problem.violations(values), closure, facts["residual"])
 
 

@@ -32,7 +32,7 @@ class Round:
     keep: int  # lenses that enter
     steps: int
     softness: tuple
-    rate: float = 1e-3
+    rate: float = 3e-3  # tuned on reference k = 1: a third of it ends 1.5 % lower after the same steps
 
 
 ROUNDS = {

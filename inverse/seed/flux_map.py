@@ -24,7 +24,7 @@ import numpy as np
 from inverse.emitter import Emitter
 from inverse.profile import bspline
 from inverse.profile.envelope import Envelope
-from inverse.profile.lens import Lens
+from inverse.profile.lens import RIM_MARGIN, Lens
 from inverse.target import Target
 
 STEPS = 240  # Runge-Kutta steps a surface; the closed form for a collimated beam is met to 1e-8 mm
@@ -152,7 +152,7 @@ def build(recipe: Recipe, emitter: Emitter, box: Envelope, index, target: Target
     source = -recipe.edge * emitter.reach
     mouth = radius - box.foot * tan_draft
     foot_width = max(box.wall / np.cos(box.draft) * 1.01, 0.02 * box.radius) * recipe.foot
-    rim_radius = box.radius - (0.0 if box.flange else box.rim * tan_draft)
+    rim_radius = box.radius - (0.0 if box.flange else RIM_MARGIN * box.rim * tan_draft)
     if mouth + foot_width > 0.9 * rim_radius:
         return None
     theta_c = np.radians(35.0)
@@ -174,7 +174,7 @@ def build(recipe: Recipe, emitter: Emitter, box: Envelope, index, target: Target
     corner_z = (radius - source) / (np.tan(theta_c) + tan_draft)
     corner = np.array([radius - corner_z * tan_draft, corner_z])
     rim_z = np.interp(rim_radius, points[:, 0], points[:, 1])
-    edge_z = rim_z + box.rim
+    edge_z = rim_z + RIM_MARGIN * box.rim
     lens_points = centre_points(corner, source, index, centre_out)
     falls = np.diff(lens_points[:, 0]) < 0
     lens_points = lens_points[: (np.argmax(~falls) + 1 if not falls.all() else len(lens_points))]
@@ -195,7 +195,7 @@ def _fitted(recipe, box, corner, foot_width, mouth, points, lens_points, rim_z, 
     flank = bspline.fit(lambda x: np.interp(heights(x), chain[:, 1], chain[:, 0]), SPANS["flank"])
     r, z = lens_points[::-1].T
     centre = bspline.fit(lambda x: np.interp(x * corner[0], r, z) - corner[1], SPANS["centre"])
-    edge_z, count = rim_z + box.rim, SPANS["exit"] + bspline.DEGREE
+    edge_z, count = rim_z + RIM_MARGIN * box.rim, SPANS["exit"] + bspline.DEGREE
     disc = step = None
     face = np.full(count - 1, edge_z)
     if recipe.drop:

@@ -26,6 +26,7 @@ class Beam(NamedTuple):
     weight: jax.Array
     lost: dict  # name -> (N,) weight
     residual: jax.Array  # mm, largest of the intersections
+    launched: jax.Array | None = None  # () flux sent out, set by ``farfield.trace``
 
 
 class Glass(NamedTuple):

@@ -9,7 +9,7 @@ import pytest
 
 from inverse.profile import bspline
 from inverse.profile.envelope import Envelope
-from inverse.profile.lens import Lens, section, shape
+from inverse.profile.lens import RIM_MARGIN, Lens, section, shape
 from traced import BOX, random_lens
 
 FLANGED = replace(BOX, flange=1.5)
@@ -89,11 +89,11 @@ def test_outer_walls_lean_towards_the_parting_line(part):
 
 
 def test_the_rim_is_as_thick_as_asked_and_the_aperture_as_wide(part):
-    """Edge height = the envelope's rim, edge radius = the clear radius, exactly by construction."""
+    """Edge height = the envelope's rim and its margin, edge radius = the clear radius, exactly by construction."""
     box, _, body = part
     edge = body.curve("exit ring" if "step" in body.names else "exit face").points[0]
     assert edge[0] == box.radius
-    assert edge[1] - body.curve("flank").points[-1][1] == pytest.approx(box.rim, abs=1e-12)
+    assert edge[1] - body.curve("flank").points[-1][1] == pytest.approx(RIM_MARGIN * box.rim, abs=1e-12)
 
 
 def test_the_part_stands_on_its_foot(part):
@@ -142,7 +142,8 @@ def test_a_plain_cone_has_its_closed_form_volume():
     tan, roof, top, foot = math.tan(0.03), 4.0, 11.0, 1.5
     corner = 2.0
     mouth = corner + roof * tan
-    start, end = mouth + foot, 10.0 - tan
+    rim = RIM_MARGIN  # of 1 mm
+    start, end = mouth + foot, 10.0 - rim * tan
     lens = Lens(
         corner=jnp.array([corner, roof]),
         foot=jnp.asarray(foot),
@@ -152,5 +153,5 @@ def test_a_plain_cone_has_its_closed_form_volume():
         exit=jnp.full(6, top),
     )
     frustum = lambda a, b, h: math.pi * h * (a * a + a * b + b * b) / 3.0  # noqa: E731
-    expected = frustum(start, end, top - 1.0) + frustum(end, 10.0, 1.0) - frustum(mouth, corner, roof)
+    expected = frustum(start, end, top - rim) + frustum(end, 10.0, rim) - frustum(mouth, corner, roof)
     assert section(lens, box).volume == pytest.approx(expected, rel=1e-12)

@@ -74,7 +74,7 @@ def test_every_block_of_the_gradient_is_that_of_central_differences(name, make, 
     """Each component within 1e-6 of the largest of its block (1e-9 to 6e-8 when written)."""
     slope = np.asarray(getattr(gradient(name, make)[2], field))
     expected = central(name, make(name), field)
-    assert np.abs(expected).max() > 1e-5  # the block matters, so the comparison is not empty
+    assert np.abs(expected).max() > 1e-6  # far above the floor below: the comparison is not empty
     np.testing.assert_allclose(slope, expected, rtol=0.0, atol=1e-6 * np.abs(expected).max() + 1e-9)
 
 
