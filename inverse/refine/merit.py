@@ -66,7 +66,7 @@ class Problem:
         lower = np.array([r.lower for r in self.limits])
         upper = np.array([r.upper for r in self.limits])
         scale = np.array([r.scale for r in self.limits])
-        slack = SLACK * scale
+        slack = SLACK * scale + np.array([r.margin for r in self.limits])
         low = jnp.where(np.isfinite(lower), np.where(np.isfinite(lower), lower, 0.0) + slack - values, -jnp.inf)
         high = jnp.where(np.isfinite(upper), values - np.where(np.isfinite(upper), upper, 0.0) + slack, -jnp.inf)
         return jnp.maximum(low, high) / scale

@@ -1,5 +1,6 @@
 """The verdict: which exit code, which word, which sentences, from what was found."""
 
+from types import SimpleNamespace
 import copy
 import math
 
@@ -136,7 +137,10 @@ def test_the_deviation_of_a_beam_from_itself_is_zero_and_of_a_dim_one_known():
 
 
 def test_the_far_field_table_starts_on_the_axis():
-    """One more angle, 0, with the value of the first ring."""
-    field = result.far_field(beam(lambda a: 100.0 - a))
+    """One more angle, 0, with the value of the first ring; the whole carries the flux of the ledger."""
+    ledger = {"in target": 0.5, "forward outside target": 0.1}
+    landing = SimpleNamespace(far_field=beam(lambda a: 100.0 - a), ledger=ledger)
+    field = result.far_field(landing, 50.0)
+    assert field.flux == pytest.approx(0.6 * 50.0, rel=1e-12)
     assert field.theta[0] == 0.0 and len(field.theta) == 41
     assert field.candela[0] == field.candela[1] != field.candela[2]

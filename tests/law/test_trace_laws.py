@@ -47,7 +47,7 @@ def test_under_a_dome_the_books_close_to_the_noise_of_the_points():
     sets = [farfield.shifted(points(), jnp.asarray(s)) for s in shifts]
     found = np.array([closure(*tracer(DOMED)(lens, u, 0.01, PMMA)[:2]) for u in sets])
     assert np.abs(found).max() < 5e-4
-    assert abs(found.mean()) < 4.0 * found.std(ddof=1) / np.sqrt(32) + 1e-6
+    assert abs(found.mean()) < 4.0 * found.std(ddof=1) / np.sqrt(32) + 2e-5  # the mean transmittance is a midpoint sum
 
 
 def test_a_dome_of_air_is_no_dome():
