@@ -13,7 +13,7 @@ import jax
 import jax.numpy as jnp
 import numpy as np
 
-from inverse.outcome import Stop
+from inverse.outcome import BriefError, Stop
 from inverse.profile import bspline, moulding
 from inverse.profile.lens import Lens
 from inverse.refine import merit as merit_of
@@ -206,7 +206,13 @@ def find(problem, plan: Plan, index, *, record, watch, memory=None) -> Found:
     watch.stage("scoring starts")
     trials = screen(problem, plan, index, score)
     if not trials:
-        raise ValueError("no seed lens fits the envelope: pocket, walls and height leave no room for a flank")
+        raise BriefError(
+            [
+                f"lens: got a clear radius of {problem.scene.box.radius:.4g} mm and a height of at most "
+                f"{problem.scene.box.height:.4g} mm, in which pocket and walls leave no room for a flank; "
+                "wanted more aperture or height, or less clearance or wall"
+            ]
+        )
     screened = len(trials)
     watch.note(f"{screened} starts scored, the best reaches {trials[0].score:.1%} of the limit")
     watch.stage("refining", sum(r.steps * min(r.keep, screened) for r in rounds))
