@@ -7,7 +7,6 @@ range is written once.  TOML types are taken strictly: true is not 1, "22" is no
 
 import datetime
 import difflib
-import math
 import re
 from dataclasses import dataclass
 

@@ -14,7 +14,7 @@ import jax.numpy as jnp
 import numpy as np
 
 from inverse.outcome import BriefError, Stop
-from inverse.profile import bspline, moulding
+from inverse.profile import bspline
 from inverse.profile.lens import Lens
 from inverse.refine import merit as merit_of
 from inverse.refine.descent import Adam, Descent

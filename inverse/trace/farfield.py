@@ -14,7 +14,7 @@ from inverse.emitter import Emitter
 from inverse.profile.envelope import Envelope
 from inverse.profile.lens import Lens, shape as shape_of
 from inverse.target import Surroundings, Target
-from inverse.trace import interface, intersect, route
+from inverse.trace import interface, route
 from inverse.trace.launch import Launcher, bracketed_root, launcher
 
 LIT = 1e-12  # a ray with less weight than this cannot be seen in any figure
