@@ -42,7 +42,7 @@ def design(brief, folder, *, watch, resume=False, nearest=False) -> dict:
     search.forget_compiled()  # the verifier and the CAD kernel need the memory
     context = {
         "search": [
-            {"family": t.recipe.words, "start_score": t.start, "end_score": t.score, "rounds": t.rounds, "kept": i == 0}
+            {"family": t.words, "start_score": t.start, "end_score": t.score, "rounds": t.rounds, "kept": i == 0}
             for i, t in enumerate(found.trials)
         ],
         "screened": found.screened,

@@ -13,6 +13,7 @@ points (Greville abscissa, coefficient), is what CAD receives: linear precision 
 
 import functools
 
+import jax
 import jax.numpy as jnp
 import numpy as np
 from scipy.interpolate import BSpline, PPoly
@@ -50,7 +51,8 @@ def fit(function, spans):
 
 
 @functools.cache
-def _refiner(spans, finer):
+def refiner(spans, finer):
+    """Matrix from the coefficients on ``spans`` to those on ``finer`` spans of the same graph."""
     g = greville(finer)
     coarse = BSpline.design_matrix(g, knots(spans), DEGREE).toarray()
     return np.linalg.solve(BSpline.design_matrix(g, knots(finer), DEGREE).toarray(), coarse)
@@ -58,7 +60,7 @@ def _refiner(spans, finer):
 
 def refine(coefficients, finer):
     """The same graph on ``finer`` spans; exact when ``finer`` is a multiple of the present spans."""
-    return _refiner(len(coefficients) - DEGREE, finer) @ np.asarray(coefficients)
+    return refiner(len(coefficients) - DEGREE, finer) @ np.asarray(coefficients)
 
 
 def pieces(coefficients):
@@ -73,8 +75,35 @@ def evaluate(A, start, end, x):
     u = (x - start) * scale
     inside = jnp.clip(u, 0.0, float(spans))
     s = jnp.clip(inside.astype(jnp.int32), 0, spans - 1)
-    a0, a1, a2, a3 = (A[:, j][s] for j in range(4))
+    a0, a1, a2, a3 = _rows(A, s)
     w = inside - s
     slope = a1 + w * (2.0 * a2 + w * 3.0 * a3)
     value = a0 + w * (a1 + w * (a2 + w * a3)) + slope * (u - inside)
     return value, slope * scale
+
+
+def _rows(A, s):
+    """The four coefficients of span ``s`` (in range), each of its shape."""
+    rows = A.at[s].get(mode="promise_in_bounds")
+    return tuple(rows[..., j] for j in range(4))
+
+
+def expand(A, start, end, x):
+    """Taylor series of the graph about ``x`` (N,), itself held: (X, f, f', f''), X equal to ``x`` in value.
+
+    X, f and f' carry derivatives with respect to ``A``, ``start`` and ``end`` at a fixed place between the
+    ends; f'' is a plain number.  So f + f' (y − X) and f' + f'' (y − X) at y = x are the graph and its slope
+    with all their first derivatives, at the cost of one evaluation.
+    """
+    hold = jax.lax.stop_gradient
+    spans = A.shape[0]
+    scale = spans / (end - start)
+    u = hold((x - start) * scale)
+    inside = jnp.clip(u, 0.0, float(spans))
+    s = jnp.clip(inside.astype(jnp.int32), 0, spans - 1)
+    a0, a1, a2, a3 = _rows(A, s)
+    w, beyond = inside - s, u - inside
+    slope = a1 + w * (2.0 * a2 + w * 3.0 * a3)
+    value = a0 + w * (a1 + w * (a2 + w * a3)) + slope * beyond
+    bend = jnp.where((u >= 0.0) & (u <= float(spans)), 2.0 * a2 + 6.0 * w * a3, 0.0)
+    return start + u / scale, value, slope * scale, hold(bend * scale * scale)

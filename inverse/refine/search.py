@@ -14,8 +14,8 @@ import jax.numpy as jnp
 import numpy as np
 
 from inverse.outcome import BriefError, Stop
-from inverse.profile import bspline
 from inverse.profile.lens import Lens
+from inverse.refine import coordinates
 from inverse.refine import merit as merit_of
 from inverse.refine.descent import Adam, Descent
 from inverse.refine.plan import Plan
@@ -27,20 +27,33 @@ ROOM_FOR_ONE = 1.8  # étendue ratio from which a single exit face comes within 
 STEP_PAYS = 0.01  # a step in the exit face must earn this much of the ceiling: it is one more edge to mould
 
 
+# first step, in units of the coordinates; heights on reference k = 1: a third of it ends 1.5 % lower after as many steps
+RATES = {"heights": 3e-3, "tangents": 2e-3}
+
+
 @dataclass(frozen=True)
 class Round:
     keep: int  # lenses that enter
     steps: int
     softness: tuple
-    rate: float = 3e-3  # tuned on reference k = 1: a third of it ends 1.5 % lower after the same steps
 
 
 ROUNDS = {
-    "quick": (Round(3, 150, (0.25, 0.1)), Round(1, 400, (0.1, 0.03))),
-    "normal": (Round(6, 200, (0.25, 0.12)), Round(2, 300, (0.12, 0.06)), Round(1, 1000, (0.06, 0.02))),
-    "thorough": (Round(12, 250, (0.25, 0.12)), Round(5, 500, (0.12, 0.06)), Round(2, 2000, (0.06, 0.015))),
+    "quick": (Round(8, 100, (0.25, 0.12)), Round(2, 200, (0.12, 0.06)), Round(1, 400, (0.06, 0.03))),
+    "normal": (
+        Round(20, 150, (0.25, 0.12)),
+        Round(6, 300, (0.12, 0.06)),
+        Round(2, 600, (0.06, 0.03)),
+        Round(1, 1500, (0.06, 0.02)),
+    ),
+    "thorough": (
+        Round(48, 200, (0.25, 0.12)),
+        Round(12, 500, (0.12, 0.06)),
+        Round(4, 1000, (0.06, 0.03)),
+        Round(2, 4000, (0.06, 0.015)),
+    ),
 }
-RAYS = {"quick": 2048, "normal": 4096, "thorough": 8192}
+RAYS = {"quick": 2048, "normal": 2048, "thorough": 4096}
 
 
 @dataclass(frozen=True)
@@ -52,6 +65,12 @@ class Trial:
     start: float  # score of the seed
     score: float  # score now: share over best, less violations
     rounds: int = 0
+    kind: str = "heights"  # coordinates of its descent
+
+    @property
+    def words(self):
+        """The family, for the table of what was tried."""
+        return f"{self.recipe.words}, by {self.kind}"
 
 
 @dataclass(frozen=True)
@@ -128,26 +147,6 @@ def _settle(trials):
     return sorted(trials, key=lambda t: -(t.score - (STEP_PAYS if t.lens.stepped else 0.0)))
 
 
-def finer(lens: Lens, factor=2) -> Lens:
-    """The same lens on ``factor`` times as many spans (exact)."""
-
-    def grow(c):
-        return bspline.refine(c, (len(c) - bspline.DEGREE) * factor)
-
-    centre = grow(np.concatenate([lens.centre[:1], lens.centre, [0.0]]))
-    axis = not lens.stepped
-    face = grow(np.concatenate([lens.exit[:1], lens.exit]) if axis else np.asarray(lens.exit))
-    disc = None
-    if lens.stepped:
-        disc = jnp.asarray(np.delete(grow(np.concatenate([lens.disc[:1], lens.disc])), 1))
-    return replace(
-        lens,
-        centre=jnp.asarray(np.delete(centre, 1)[:-1]),
-        exit=jnp.asarray(np.delete(face, 1) if axis else face),
-        disc=disc,
-    )
-
-
 class Memory:
     """Forgets everything: the base for a memory on disk that lets a run be resumed."""
 
@@ -175,7 +174,7 @@ class _Race:
     def run(self, trial, number, place, part):
         """One trial through one round; resumes from memory when the memory knows the job."""
         engine, job = self.engine(trial.lens), f"{number}.{place}"
-        state = engine.start(trial.lens)
+        state = engine.start(trial.lens, trial.kind)
         saved = self.memory.recall(job)
         if saved is not None:
             state = engine.restore(state, saved[0], saved[1])
@@ -189,12 +188,14 @@ class _Race:
             self.record(row)
 
         last = number == len(ROUNDS[self.plan.effort])
-        stage = f"round {number}, start {place}: {trial.recipe.words}"
-        method = Adam(part.steps, part.rate, part.softness, settle=last)
+        stage = f"round {number}, start {place}: {trial.words}"
+        method = Adam(part.steps, RATES[trial.kind], part.softness, settle=last)
         result = engine.run(state, method, stage=stage, record=note)
         value, _ = self.score(result.lens)
         self.done += part.steps
         self.running = None
+        if number > 1 and value < trial.score:  # the round led nowhere better
+            return replace(trial, rounds=number), result.stop
         return replace(trial, lens=result.lens, score=value, rounds=number), result.stop
 
 
@@ -219,8 +220,11 @@ def find(problem, plan: Plan, index, *, record, watch, memory=None) -> Found:
     ended, finished, stop = [], [], Stop.CONVERGED
     try:
         for number, part in enumerate(rounds, start=1):
-            entered = _choose(trials, part.keep)
-            ended += [t for t in trials if t not in entered and t.rounds]
+            if number == 1:
+                entered = [replace(t, kind=k) for t in _choose(trials, part.keep // 2) for k in coordinates.KINDS]
+            else:
+                entered = _choose(trials, part.keep)
+            ended += [t for t in trials if t.rounds and not any(t is e for e in entered)]
             trials, finished = entered, []
             for place, trial in enumerate(entered, start=1):
                 trial, stop = race.run(trial, number, place, part)
@@ -228,10 +232,10 @@ def find(problem, plan: Plan, index, *, record, watch, memory=None) -> Found:
             trials = sorted(finished, key=lambda t: -t.score)
     except KeyboardInterrupt:
         stop = Stop.INTERRUPTED
-        untouched = [t for t in trials if t.recipe not in [f.recipe for f in finished]]
+        untouched = [t for t in trials if (t.recipe, t.kind) not in [(f.recipe, f.kind) for f in finished]]
         if race.running is not None:
             trial, engine, state = race.running
-            lens = engine.lens(state.x)
+            lens = engine.lens(state)
             finished.append(replace(trial, lens=lens, score=score(lens)[0], rounds=max(trial.rounds, 1)))
         trials = finished + [t for t in untouched if t.rounds or not finished]
     trials = _settle(trials)

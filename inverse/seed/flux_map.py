@@ -48,7 +48,7 @@ class Recipe:
         return f"{kind}, pocket ×{self.pocket:.2f}, foot ×{self.foot:.1f}{', crossing' if self.crossing else ''}{face}"
 
 
-SPANS = {"wall": 2, "centre": 8, "flank": 12, "exit": 10, "disc": 6}
+SPANS = {"wall": 2, "centre": 16, "flank": 24, "exit": 20, "disc": 12}
 
 
 def _direction(angle):

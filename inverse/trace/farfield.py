@@ -69,8 +69,7 @@ def trace(lens: Lens, scene: Scene, u, blur):
         floor = source.split(rho, turn, shape.mouth_radius, jnp.asarray(box.foot))
 
     def over_rim(c):
-        p, d, _ = source.ray(rho, turn, c)
-        return route.height_at_rim(p, d, shape, glass) - shape.rim_height
+        return route.height_at_rim(source.ray(rho, turn, c)[0], shape, glass) - shape.rim_height
 
     nudge = 1e-7  # keeps both ends of the bracket on the wall's side of the corner
     over = bracketed_root(over_rim, floor + nudge, corner - nudge)
@@ -80,67 +79,63 @@ def trace(lens: Lens, scene: Scene, u, blur):
     def rays(low, high, some):
         share = high - low
         c = source.cosine(low[:some] + u[:some, 2] * share[:some])
-        p, d, weight = source.ray(rho[:some], tuple(t[:some] for t in turn), c)
+        ray, weight = source.ray(rho[:some], tuple(t[:some] for t in turn), c)
         part = share[:some] / some
         if some < count:  # a ratio estimate, so that the part carries the flux all points say it has
             seen = jnp.sum(part)
             part = part * jnp.where(seen > 0.0, jnp.sum(share) / count / jnp.where(seen > 0.0, seen, 1.0), 0.0)
-        return p, d, weight * part
+        return ray, weight * part
 
     lost = {"under the foot": jnp.sum(1.0 - at_floor) / count}
+    residual = []
 
-    def book(losses):
+    def follow(road, ray, weight, *rest):
+        ray, after, losses, miss = road(ray, weight, shape, glass, *rest)
         for name, value in losses.items():
             lost[name] = lost.get(name, 0.0) + jnp.sum(value)
+        residual.append(jnp.max(jnp.where(weight > LIT, miss, 0.0)))
+        return ray, after
 
-    middle = rays(jnp.zeros_like(rho), at_corner, count)
-    *central, losses, miss = route.centre(*middle, shape, glass)
-    book(losses)
-    residual = [jnp.max(miss)]
-    sides = _join(rays(at_corner, at_rim, few), rays(at_rim, at_floor, count))
-    launched = jnp.sum(middle[2]) + jnp.sum(sides[2]) + lost["under the foot"]
-    q, inside, weight, losses, miss = route.wall(*sides, shape, glass)
-    book(losses)
-    residual.append(jnp.max(miss))
-    straight = jax.tree_util.tree_map(lambda a: a[:few], (q, inside, weight))
-    rest = jax.tree_util.tree_map(lambda a: a[few:], (q, inside, weight))
-    *turned, losses, miss = route.flank(*rest, shape, glass, blur)
-    book(losses)
-    residual.append(jnp.max(jnp.where(rest[2] > LIT, miss, 0.0)))
-    beam = route.leave(*_join(central, straight, turned), shape, glass, blur)
-    book(beam.lost)
+    starts = rays(jnp.zeros_like(rho), at_corner, count), rays(at_corner, at_rim, few), rays(at_rim, at_floor, count)
+    launched = sum(jnp.sum(weight) for _, weight in starts) + lost["under the foot"]
+    centre = follow(route.centre, *starts[0])
+    direct = follow(route.wall, *starts[1])
+    turned = follow(route.flank, *follow(route.wall, *starts[2]), blur)
+    beam = route.leave(*_join(centre, direct, turned), shape, glass, blur)
+    for name, value in beam.lost.items():
+        lost[name] = lost.get(name, 0.0) + jnp.sum(value)
     residual.append(jnp.max(jnp.where(beam.weight > LIT, beam.residual, 0.0)))
     return beam._replace(launched=launched), lost, jnp.max(jnp.stack(residual))
 
 
 def _join(*trees):
-    return jax.tree_util.tree_map(lambda *a: jnp.concatenate(a), *map(tuple, trees))
+    return jax.tree_util.tree_map(lambda *a: jnp.concatenate(a), *trees)
 
 
 def land(beam, scene: Scene, top):
     """Landing coordinate q = tan²θ (N,) and transmittance of the port of one exit beam."""
-    p, d = beam.point, beam.direction
     outer, port = scene.surroundings.index, scene.surroundings.port
-    passed = 1.0
-    climbs = d[2] > 1e-3
-    d = (d[0], d[1], jnp.where(climbs, d[2], 1e-3))
-    sine2 = d[0] * d[0] + d[1] * d[1]
+    ray = beam.ray
+    climbs = ray.dz > 1e-3
+    dz = jnp.where(climbs, ray.dz, 1e-3)
+    sine2 = ray.dr * ray.dr + ray.dt * ray.dt
     cosine = lambda n: jnp.sqrt(jnp.maximum(1.0 - sine2 / n**2, 1e-12))
+    passed = 1.0
     if port is not None:
         inside = cosine(port.index)
-        passed = 1.0 - interface.reflectance(d[2], 1.0, port.index)
-        passed = passed * (1.0 - interface.reflectance(inside, port.index, outer))
+        passed = interface.transmittance(dz, 1.0, port.index)
+        passed = passed * interface.transmittance(inside, port.index, outer)
     if scene.target.distance is None:
-        q = sine2 / (outer**2 * cosine(outer) ** 2) if outer != 1.0 else sine2 / d[2] ** 2
+        q = sine2 / (outer**2 * cosine(outer) ** 2) if outer != 1.0 else sine2 * interface.reciprocal(dz * dz)
     else:
         left = scene.target.distance
         if port is None:
-            run = (left - p[2]) / d[2]
+            run = (left - ray.z) * interface.reciprocal(dz)
         else:  # lengths along the in-plane direction, per unit sine in air
             gap = top + port.gap
-            run = (gap - p[2]) / d[2] + port.thickness / (port.index * inside)
+            run = (gap - ray.z) / dz + port.thickness / (port.index * inside)
             run = run + (left - gap - port.thickness) / (outer * cosine(outer))
-        x, y = p[0] + run * d[0], p[1] + run * d[1]
+        x, y = ray.r + run * ray.dr, run * ray.dt
         q = (x * x + y * y) / left**2
     return q, beam.weight * passed * climbs, beam.weight * (1.0 - passed * climbs)
 
@@ -160,6 +155,6 @@ def flux_inside(lens: Lens, scene: Scene, u, angles, softness, blur):
     beam, lost, residual = trace(lens, scene, u, blur)
     edge = jnp.tan(jnp.asarray(angles)) ** 2
     q, weight, turned = land(beam, scene, highest(lens, scene.box))
-    shares = weight @ jax.nn.sigmoid((1.0 - q[:, None] / edge[None, :]) / softness)
+    shares = weight @ jax.nn.sigmoid((1.0 - q[:, None] * (1.0 / edge)[None, :]) * (1.0 / softness))
     lost["reflected by the port"] = jnp.sum(turned)
     return shares, {"forward": jnp.sum(weight), "lost": lost, "launched": beam.launched, "residual": residual}

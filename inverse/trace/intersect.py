@@ -1,102 +1,123 @@
 """Where a ray meets a revolved graph.
 
-For z = f(r) the root of g(t) = z(t) − f(r(t)), for r = h(z) that of g(t) = r(t)² − h(z(t))².
-The root is searched without derivatives, then one step carries them,
+A ray from (r, z) with the direction (d_r, d_φ, d_z) is, after the length t, at
 
-    t = t* − g(t*)/stop(g'(t*)) ,
+    ϱ = √((r + t d_r)² + (t d_φ)²) ,   ζ = z + t d_z ,   with   ϱ' = ((r + t d_r) d_r + t d_φ²)/ϱ .
 
-which has the right value and, once converged, the exact first derivative with respect to
-everything g depends on.  Rays are tuples of component arrays (N,); the residual in mm is
-returned so that callers can count what did not converge.
+For z = f(r) the root of g = ζ − f(ϱ) is wanted, for r = h(z) that of g = ϱ − h(ζ).  It is searched
+without derivatives, then one step t = t* − g/stop(g') carries them; ϱ, ϱ' and the graph's slope
+follow that step to first order (ϱ'' = d_φ'²/ϱ).  Once converged, values and first derivatives
+with respect to everything g depends on are exact, at the cost of one evaluation of the graph.  The
+residual in mm is returned, so that callers can count what did not converge.
 """
 
 import jax
 import jax.numpy as jnp
 
 from inverse.profile import bspline
+from inverse.trace.interface import TINY, Ray, inverse_root, reciprocal
+from inverse.trace.stage import stage
 
 STEPS = 5  # Newton steps; the residual is returned, so a ray that needs more is seen
-TINY = 1e-30  # mm²; keeps the radius differentiable on the axis
-
-
-def _along(p, d, t):
-    return tuple(a + t * b for a, b in zip(p, d))
-
-
-def radius(q):
-    """Distance from the axis, with a finite derivative on it."""
-    return jnp.sqrt(q[0] * q[0] + q[1] * q[1] + TINY)
-
-
-def _finish(g, t):
-    t = jax.lax.stop_gradient(t)
-    value, slope = g(t)
-    return t - value / jax.lax.stop_gradient(slope)
 
 
 def _hold(tree):
     return jax.tree_util.tree_map(jax.lax.stop_gradient, tree)
 
 
-def with_height(p, d, graph, guess, steps=STEPS):
-    """Meet z = f(r). Returns the point, its upward unit normal and the residual (mm)."""
+@stage
+def _at(ray, t):
+    """ϱ, ϱ' and 1/ϱ after the length ``t``."""
+    x, y = ray.r + t * ray.dr, t * ray.dt
+    square = x * x + y * y + TINY
+    over = inverse_root(square)
+    return square * over, (x * ray.dr + y * ray.dt) * over, over
 
-    def equation(p, d, A, start, end):
-        def g(t):
-            x, y, z = _along(p, d, t)
-            r = radius((x, y))
-            f, slope = bspline.evaluate(A, start, end, r)
-            return z - f, d[2] - slope * (x * d[0] + y * d[1]) / r
 
-        return g
+@stage
+def _moved(ray, t, there, step):
+    """The ray at its meeting point: t*, (ϱ, ϱ', 1/ϱ) there, and the step that carries the derivatives."""
+    hold = jax.lax.stop_gradient
+    r, speed, over = there
+    along = hold(speed) * step
+    around = ray.r * ray.dt * (over - hold(over * over) * along)
+    radial = speed + hold(around * around * over) * step
+    return Ray(r + along, ray.z + (t + step) * ray.dz, radial, around, ray.dz)
 
+
+@stage
+def with_height(ray, graph, guess, steps=STEPS):
+    """Meet z = f(r). Returns the ray there, the surface's upward unit normal (m_r, m_z), the length and the residual (mm)."""
     A = bspline.pieces(graph.coefficients)
-    free = equation(p, d, A, graph.start, graph.end)
-    held = equation(*_hold((p, d, A, graph.start, graph.end)))
-    t = _newton(held, jax.lax.stop_gradient(guess), steps)
-    residual = jnp.abs(held(t)[0])
-    q = _along(p, d, _finish(free, t))
-    r = radius(q)
-    _, slope = bspline.evaluate(A, graph.start, graph.end, r)
-    scale = 1.0 / jnp.sqrt(1.0 + slope * slope)
-    return q, (-slope * q[0] / r * scale, -slope * q[1] / r * scale, scale), residual
+    held, B, start, end = _hold((ray, A, graph.start, graph.end))
+
+    def g(t):
+        r, speed, _ = _at(held, t)
+        f, slope = bspline.evaluate(B, start, end, r)
+        return held.z + t * held.dz - f, held.dz - slope * speed
+
+    t, residual = _newton(g, jax.lax.stop_gradient(guess), steps)
+    r, speed, over = _at(ray, t)
+    x, f, slope, bend = bspline.expand(A, graph.start, graph.end, r)
+    hold = jax.lax.stop_gradient
+    miss = ray.z + t * ray.dz - f - hold(slope) * (r - x)
+    step = -miss * hold(1.0 / _away(ray.dz - slope * speed))
+    there = _moved(ray, t, (r, speed, over), step)
+    slope = slope + bend * (there.r - x)
+    scale = inverse_root(1.0 + slope * slope)
+    return there, (-slope * scale, scale), t + step, residual
 
 
-def with_radius(p, d, graph, guess, steps=STEPS):
-    """Meet r = h(z). Returns the point, its outward unit normal and the residual (mm)."""
-
-    def equation(p, d, A, start, end):
-        def g(t):
-            x, y, z = _along(p, d, t)
-            h, slope = bspline.evaluate(A, start, end, z)
-            return x * x + y * y - h * h, 2.0 * (x * d[0] + y * d[1] - h * slope * d[2])
-
-        return g
-
+@stage
+def with_radius(ray, graph, guess, steps=STEPS):
+    """Meet r = h(z). Returns the ray there, the surface's outward unit normal (m_r, m_z), the length and the residual (mm)."""
     A = bspline.pieces(graph.coefficients)
-    free = equation(p, d, A, graph.start, graph.end)
-    held = equation(*_hold((p, d, A, graph.start, graph.end)))
-    t = _newton(held, jax.lax.stop_gradient(guess), steps)
-    q = _along(p, d, _finish(free, t))
-    h, slope = bspline.evaluate(A, graph.start, graph.end, q[2])
-    residual = jnp.abs(held(t)[0]) / (2.0 * jnp.abs(h))
-    scale = 1.0 / (jnp.sqrt(1.0 + slope * slope) * radius(q))
-    return q, (q[0] * scale, q[1] * scale, -slope * radius(q) * scale), jax.lax.stop_gradient(residual)
+    held, B, start, end = _hold((ray, A, graph.start, graph.end))
+
+    def g(t):  # squares: smooth where the ray passes near the axis
+        x, y = held.r + t * held.dr, t * held.dt
+        h, slope = bspline.evaluate(B, start, end, held.z + t * held.dz)
+        return x * x + y * y - h * h, 2.0 * (x * held.dr + y * held.dt - h * slope * held.dz)
+
+    t, _ = _newton(g, jax.lax.stop_gradient(guess), steps)
+    r, speed, over = _at(ray, t)
+    z = ray.z + t * ray.dz
+    x, h, slope, bend = bspline.expand(A, graph.start, graph.end, z)
+    hold = jax.lax.stop_gradient
+    miss = r - h - hold(slope) * (z - x)
+    step = -miss * hold(1.0 / _away(speed - slope * ray.dz))
+    there = _moved(ray, t, (r, speed, over), step)
+    slope = slope + bend * (there.z - x)
+    scale = inverse_root(1.0 + slope * slope)
+    return there, (scale, -slope * scale), t + step, hold(jnp.abs(miss))
+
+
+def _away(slope):
+    """``slope`` kept away from zero, where a ray runs along the surface."""
+    return jnp.where(jnp.abs(slope) > 1e-12, slope, 1e-12)
 
 
 def _newton(g, t, steps):
     def step(_, t):
         value, slope = g(t)
-        safe = jnp.where(jnp.abs(slope) > 1e-12, slope, 1e-12)
-        return t - value / safe
+        return t - value / _away(slope)
 
-    return jax.lax.fori_loop(0, steps, step, t)
+    t = jax.lax.fori_loop(0, steps, step, t)
+    return t, jnp.abs(g(t)[0])
 
 
-def to_cylinder(p, d, r):
+@stage
+def to_cylinder(ray, r):
     """Path length to the cylinder of radius ``r`` from inside it (N,)."""
-    a = d[0] * d[0] + d[1] * d[1] + TINY
-    b = p[0] * d[0] + p[1] * d[1]
-    c = p[0] * p[0] + p[1] * p[1] - r * r
+    a = ray.dr * ray.dr + ray.dt * ray.dt + TINY
+    b = ray.r * ray.dr
+    c = ray.r * ray.r - r * r
     disc = b * b - a * c
-    return (-b + jnp.sqrt(jnp.where(disc > 0.0, disc, TINY))) / a
+    safe = jnp.where(disc > 0.0, disc, TINY)
+    return (safe * inverse_root(safe) - b) * reciprocal(a)
+
+
+@stage
+def radius_at(ray, z):
+    """Radius (N,) at which a climbing ray passes the height ``z``."""
+    return _at(ray, (z - ray.z) * reciprocal(ray.dz))[0]

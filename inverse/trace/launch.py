@@ -58,37 +58,38 @@ class Launcher:
         if self.law_grid is None:
             power = self.emitter.law.power + 1.0
             rest = jnp.maximum(1.0 - u, TINY)
-            return jnp.sqrt(rest) if power == 2.0 else rest ** (1.0 / power)
+            return rest * interface.inverse_root(rest) if power == 2.0 else rest ** (1.0 / power)
         cosines, flux = self.law_grid
         return jnp.interp(u, jnp.asarray(flux), jnp.asarray(cosines))
 
     def ray(self, rho, turn, c):
-        """Start, unit direction and weight of the rays in the air of the pocket. ``turn`` = (cos φ, sin φ)."""
-        zero = jnp.zeros_like(rho)
-        p = (rho, zero, zero)
-        s = jnp.sqrt(jnp.maximum(1.0 - c * c, TINY))
-        d = (s * turn[0], s * turn[1], c)
+        """The rays in the air of the pocket, and their weight. ``turn`` = (cos φ, sin φ)."""
+        square = jnp.maximum(1.0 - c * c, TINY)
+        s = square * interface.inverse_root(square)
+        start = interface.Ray(rho, jnp.zeros_like(rho), s * turn[0], s * turn[1], c)
         if self.dome is None:
-            return p, d, jnp.ones_like(c)
+            return start, jnp.ones_like(c)
         radius = self.dome.radius
-        b = interface.dot(p, d)
+        b = rho * start.dr
         t = -b + jnp.sqrt(b * b + radius * radius - rho * rho)
-        q = tuple(a + t * v for a, v in zip(p, d))
-        out, passed = interface.refract(d, tuple(a / radius for a in q), self.dome.index, 1.0)
-        return q, out, passed / self.transmittance
+        x, y, z = rho + t * start.dr, t * start.dt, t * c
+        there = interface.ray((x, y, z), (start.dr, start.dt, c))
+        out, passed = interface.refract(there, (there.r / radius, z / radius), self.dome.index, 1.0)
+        return out, passed / self.transmittance
 
     def split(self, rho, turn, edge_radius, edge_height):
         """cos θ at which a ray from (ρ, φ) passes through the circle (edge_radius, edge_height) in the pocket."""
         if self.dome is None:
             s = rho * turn[1]
-            reach = -rho * turn[0] + jnp.sqrt(edge_radius * edge_radius - s * s)
-            return edge_height / jnp.sqrt(edge_height * edge_height + reach * reach)
+            square = jnp.maximum(edge_radius * edge_radius - s * s, TINY)  # a narrower edge is passed by no ray
+            reach = square * interface.inverse_root(square) - rho * turn[0]
+            return edge_height * interface.inverse_root(edge_height * edge_height + reach * reach)
 
         def excess(c):
             # times the sine: the height alone grows without bound near the axis, and secants crawl
-            p, d, _ = self.ray(rho, turn, c)
-            sine = jnp.sqrt(d[0] * d[0] + d[1] * d[1] + TINY)
-            return (p[2] - edge_height + intersect.to_cylinder(p, d, edge_radius) * d[2]) * sine
+            ray, _ = self.ray(rho, turn, c)
+            sine = jnp.sqrt(ray.dr * ray.dr + ray.dt * ray.dt + TINY)
+            return (ray.z - edge_height + intersect.to_cylinder(ray, edge_radius) * ray.dz) * sine
 
         zero = jnp.zeros_like(rho)
         return bracketed_root(excess, zero, zero + (1.0 - 1e-12))
@@ -111,7 +112,7 @@ def launcher(emitter: Emitter) -> Launcher:
     m = (np.arange(64) + 0.5) / 64
     a, b, u = (x.ravel() for x in np.meshgrid(m, m, m))
     turn = (jnp.asarray(np.cos(np.pi * b)), jnp.asarray(np.sin(np.pi * b)))
-    weight = free.ray(free.radius(jnp.asarray(a)), turn, free.cosine(jnp.asarray(u)))[2]
+    weight = free.ray(free.radius(jnp.asarray(a)), turn, free.cosine(jnp.asarray(u)))[1]
     return Launcher(emitter, squares, float(jnp.mean(weight)), grid)
 
 

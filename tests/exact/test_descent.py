@@ -6,12 +6,14 @@ import jax
 import jax.numpy as jnp
 import numpy as np
 import pytest
+from jax.flatten_util import ravel_pytree
+from scipy.interpolate import BSpline
 
 from inverse.outcome import Stop
-from inverse.profile import moulding
+from inverse.profile import bspline, moulding
 from inverse.profile.lens import section, shape
 from inverse.progress import Watcher
-from inverse.refine import search
+from inverse.refine import coordinates, search
 from inverse.refine.descent import Adam, Descent
 from inverse.refine.plan import Plan
 from inverse.refine.search import Memory, Trial
@@ -79,7 +81,7 @@ def test_simple_bounds_hold_whatever_the_step(engine):
     assert result.state.step == 50 and not same(result.lens, seed_lens())
     assert float(result.lens.wall.min()) >= np.tan(BOX.draft) and float(result.lens.foot) >= BOX.wall
     start = engine.start(replace(seed_lens(), foot=jnp.asarray(0.1), wall=0.0 * seed_lens().wall))
-    lens = engine.lens(start.x)
+    lens = engine.lens(start)
     assert float(lens.wall.min()) >= np.tan(BOX.draft) and float(lens.foot) >= BOX.wall
 
 
@@ -124,7 +126,7 @@ def scorer():
 
 @pytest.fixture
 def find(monkeypatch, engine, scorer):
-    """A whole search cut down to three seeds, two starts of 50 steps and one of 100, with 256 rays."""
+    """A whole search cut down to three seeds, one start in both coordinates of 50 steps and one of 100, with 256 rays."""
     rounds = (search.Round(2, 50, (0.25, 0.2)), search.Round(1, 100, (0.2, 0.1)))
     seeds = [flux_map.Recipe(1.6, 1.6, 0.5), flux_map.Recipe(1.6, 2.6, 0.0), flux_map.Recipe(1.25, 1.6, 0.0)]
     monkeypatch.setattr(search, "ROUNDS", {"quick": rounds})
@@ -179,16 +181,46 @@ def test_both_kinds_of_exit_face_stay_in_the_race():
     assert search._choose(trials[:4], 2) == trials[:2]
 
 
-@pytest.mark.parametrize("drop", [None, -0.6, 0.6])
-def test_a_finer_lens_is_the_same_lens(drop):
-    """Twice the spans on centre lens and exit: every curve the same to 1e-12 mm, slopes included."""
+@pytest.mark.parametrize("kind", coordinates.KINDS)
+@pytest.mark.parametrize("drop", [None, -0.6])
+def test_the_descent_begins_at_its_lens(drop, kind):
+    """origin + basis · 0 is the lens; walls, foot and corner are coordinates by themselves."""
     lens = random_lens(8, drop)
-    fine = search.finer(lens)
-    assert fine.centre.shape[0] > 1.5 * lens.centre.shape[0] - 3 and fine.exit.shape[0] > lens.exit.shape[0]
-    for old, new in zip(shape(lens, BOX)[:5], shape(fine, BOX)[:5]):
-        if old is not None:
-            for a, b in zip(old.sample(200), new.sample(200)):
-                np.testing.assert_allclose(b, a, atol=1e-11)
+    basis = coordinates.KINDS[kind](lens, BOX.radius)
+    numbers, unravel = ravel_pytree(lens)
+    assert basis.shape == (numbers.size, numbers.size)
+    assert same(unravel(numbers + basis @ np.zeros(numbers.size)), lens)
+    alone = unravel(jnp.asarray(np.count_nonzero(basis, axis=1)))
+    assert np.all(alone.corner == 1) and alone.foot == 1 and np.all(alone.wall == 1)
+
+
+@pytest.mark.parametrize("drop", [None, -0.6])
+def test_heights_move_the_curve_of_the_coarse_knots(drop):
+    """A step along a coarse height changes the centre lens by that coarse spline, the rest of the lens not."""
+    lens = random_lens(8, drop)
+    basis = coordinates.heights(lens, 1.0)
+    numbers, unravel = ravel_pytree(lens)
+    first = 2 + 1 + lens.wall.size  # corner, foot, wall come before the centre lens
+    moved = unravel(numbers + basis[:, first + 2])
+    r = np.linspace(0.0, float(lens.corner[0]), 101)
+    change = np.asarray(shape(moved, BOX).centre.at(r)[0] - shape(lens, BOX).centre.at(r)[0])
+    coarse = np.zeros(coordinates.COARSE["centre"] + 3)
+    coarse[3] = 1.0  # the axis counts once: number 2 is control point 3
+    wanted = BSpline(bspline.knots(coordinates.COARSE["centre"]), coarse, 3)(np.clip(r / r[-1], 0.0, 1.0))
+    np.testing.assert_allclose(change, wanted, atol=1e-9)
+    assert same(replace(moved, centre=lens.centre), lens)
+
+
+@pytest.mark.parametrize("drop", [None, -0.6])
+def test_tangents_tilt_one_piece_and_span_everything(drop):
+    """The matrix is regular, and a tangent of the exit face tilts its control polygon in one place only."""
+    lens = random_lens(8, drop)
+    basis = coordinates.tangents(lens, BOX.radius)
+    assert np.linalg.matrix_rank(basis) == len(basis)
+    numbers, unravel = ravel_pytree(lens)
+    first = 2 + 1 + lens.wall.size + lens.centre.size + lens.flank.size
+    change = np.asarray(unravel(numbers + basis[:, first + 4]).exit - lens.exit)
+    assert np.count_nonzero(np.abs(np.diff(change)) > 1e-12) == 1 and change[-1] == 0.0
 
 
 def test_seeds_are_scored_best_first(monkeypatch):
