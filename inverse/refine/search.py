@@ -82,6 +82,15 @@ class Found:
     score: "Scorer"
 
 
+def schedule(effort, room):
+    """The rounds of a search; where there is room for every start to end near the limit, half of the starts will do."""
+    rounds = ROUNDS[effort]
+    if room < ROOM_FOR_ONE:
+        return rounds
+    fewer = [replace(r, keep=max(r.keep // 2, 1)) for r in rounds]
+    return tuple(r for r in fewer[:-1] if r.keep > 1) + (fewer[-1],)
+
+
 def recipes(plan: Plan, target, room=1.0):
     """The families, all of them. ``room`` is the étendue ratio: with plenty, a stepped face is not tried."""
     pockets, feet = (1.0, 1.25, 1.6, 2.1, 2.8), (1.0, 1.6, 2.6, 4.2, 7.0)
@@ -160,8 +169,8 @@ class Memory:
 class _Race:
     """The rounds of one search, with its engines, memory and audience."""
 
-    def __init__(self, problem, plan, score, record, watch, memory):
-        self.problem, self.plan, self.score = problem, plan, score
+    def __init__(self, problem, plan, rounds, score, record, watch, memory):
+        self.problem, self.plan, self.rounds, self.score = problem, plan, rounds, score
         self.record, self.watch, self.memory = record, watch, memory
         self.engines, self.done, self.running = {}, 0, None
 
@@ -187,7 +196,7 @@ class _Race:
             self.watch.step(done, f"share {row['share']:.3f}, {row['share_over_ceiling']:.1%} of the limit")
             self.record(row)
 
-        last = number == len(ROUNDS[self.plan.effort])
+        last = number == len(self.rounds)
         stage = f"round {number}, start {place}: {trial.words}"
         method = Adam(part.steps, RATES[trial.kind], part.softness, settle=last)
         result = engine.run(state, method, stage=stage, record=note)
@@ -202,8 +211,8 @@ class _Race:
 def find(problem, plan: Plan, index, *, record, watch, memory=None) -> Found:
     """Search, refine, settle. ``record(row)`` sees every chunk; Ctrl-C ends with the best lens so far."""
     score = Scorer(problem)
-    rounds = ROUNDS[plan.effort]
-    race = _Race(problem, plan, score, record, watch, memory or Memory())
+    rounds = schedule(plan.effort, problem.room)
+    race = _Race(problem, plan, rounds, score, record, watch, memory or Memory())
     watch.stage("scoring starts")
     trials = screen(problem, plan, index, score)
     if not trials:

@@ -118,7 +118,7 @@ def centre_points(corner, source, index, out_angle):
     sideways = np.stack([a[:, 1], -a[:, 0]], axis=-1)  # da/dθ
     q = -_dot(sideways, normal) / _dot(a, normal)
     log = _linear(q, np.zeros_like(q), first, (last - first) / STEPS, 0.0)
-    reach = np.hypot(corner[0] - source, corner[1]) * np.exp(log)
+    reach = np.hypot(corner[0] - source, corner[1]) * np.exp(np.minimum(log, 50.0))  # past that it left every box
     return np.array([source, 0.0]) + reach[:, None] * a[::2]
 
 

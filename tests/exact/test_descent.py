@@ -230,3 +230,12 @@ def test_seeds_are_scored_best_first(monkeypatch):
     scores = [t.score for t in found]
     assert len(found) > 10 and scores == sorted(scores, reverse=True)
     assert not any(t.lens.stepped for t in found)
+
+
+def test_with_room_half_of_the_starts_will_do():
+    """Below ROOM_FOR_ONE every round; above it half of each, never none, and no round for the only one left but the last."""
+    full = search.schedule("normal", 1.0)
+    assert full == search.ROUNDS["normal"]
+    fewer = search.schedule("normal", search.ROOM_FOR_ONE)
+    assert [r.keep for r in fewer] == [r.keep // 2 for r in full if r.keep // 2 > 1] + [1]
+    assert fewer[-1].steps == full[-1].steps
