@@ -52,15 +52,10 @@ def fit(function, spans):
 
 @functools.cache
 def refiner(spans, finer):
-    """Matrix from the coefficients on ``spans`` to those on ``finer`` spans of the same graph."""
+    """Matrix from the coefficients on ``spans`` to those of the same graph on ``finer`` spans, a multiple of them."""
     g = greville(finer)
     coarse = BSpline.design_matrix(g, knots(spans), DEGREE).toarray()
     return np.linalg.solve(BSpline.design_matrix(g, knots(finer), DEGREE).toarray(), coarse)
-
-
-def refine(coefficients, finer):
-    """The same graph on ``finer`` spans; exact when ``finer`` is a multiple of the present spans."""
-    return refiner(len(coefficients) - DEGREE, finer) @ np.asarray(coefficients)
 
 
 def pieces(coefficients):
@@ -72,20 +67,23 @@ def evaluate(A, start, end, x):
     """Value and slope df/dx of the graph with pieces ``A`` on [start, end] at ``x`` (any shape)."""
     spans = A.shape[0]
     scale = spans / (end - start)
-    u = (x - start) * scale
-    inside = jnp.clip(u, 0.0, float(spans))
-    s = jnp.clip(inside.astype(jnp.int32), 0, spans - 1)
-    a0, a1, a2, a3 = _rows(A, s)
-    w = inside - s
-    slope = a1 + w * (2.0 * a2 + w * 3.0 * a3)
-    value = a0 + w * (a1 + w * (a2 + w * a3)) + slope * (u - inside)
+    value, slope, _ = _piece(A, (x - start) * scale)
     return value, slope * scale
 
 
-def _rows(A, s):
-    """The four coefficients of span ``s`` (in range), each of its shape."""
+def _piece(A, u):
+    """Value, slope and bend at ``u``, which counts spans from the start; straight beyond the ends."""
+    spans = A.shape[0]
+    inside = jnp.clip(u, 0.0, float(spans))
+    s = jnp.clip(inside.astype(jnp.int32), 0, spans - 1)
     rows = A.at[s].get(mode="promise_in_bounds")
-    return tuple(rows[..., j] for j in range(4))
+    a0, a1, a2, a3 = (rows[..., j] for j in range(4))
+    w = inside - s
+    slope = a1 + w * (2.0 * a2 + w * 3.0 * a3)
+    value = a0 + w * (a1 + w * (a2 + w * a3)) + slope * (u - inside)
+    # not by u == inside: the compiler may round the two differently
+    bend = jnp.where((u >= 0.0) & (u <= float(spans)), 2.0 * a2 + 6.0 * w * a3, 0.0)
+    return value, slope, bend
 
 
 def expand(A, start, end, x):
@@ -96,14 +94,7 @@ def expand(A, start, end, x):
     with all their first derivatives, at the cost of one evaluation.
     """
     hold = jax.lax.stop_gradient
-    spans = A.shape[0]
-    scale = spans / (end - start)
+    scale = A.shape[0] / (end - start)
     u = hold((x - start) * scale)
-    inside = jnp.clip(u, 0.0, float(spans))
-    s = jnp.clip(inside.astype(jnp.int32), 0, spans - 1)
-    a0, a1, a2, a3 = _rows(A, s)
-    w, beyond = inside - s, u - inside
-    slope = a1 + w * (2.0 * a2 + w * 3.0 * a3)
-    value = a0 + w * (a1 + w * (a2 + w * a3)) + slope * beyond
-    bend = jnp.where((u >= 0.0) & (u <= float(spans)), 2.0 * a2 + 6.0 * w * a3, 0.0)
+    value, slope, bend = _piece(A, u)
     return start + u / scale, value, slope * scale, hold(bend * scale * scale)

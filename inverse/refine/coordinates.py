@@ -2,11 +2,11 @@
 
 Light answers to slopes.  A control point moved alone tilts its curve on both sides, many moved
 together tilt it little: the heights of control points are coordinates of bad condition, the worse
-the more there are, and a step that suits one suits none of the others.  So a descent begins with
-few heights, the splines on a coarser set of knots (exact on the fine one), which finds the shape
-of the lens, and ends with the tangents between neighbouring control points of the fine set,
-summed from one end (the corner for the centre lens, the rim for flank and exit face), which are
-nearly independent of each other and settle the surface.
+the more there are, and a step that suits one suits none of the others.  There are two ways out: few
+heights, the splines on a coarser set of knots (exact on the fine one), or the tangents between
+neighbouring control points of the fine set, summed from one end (the corner for the centre lens,
+the rim for flank and exit face), which are nearly independent of each other.  Tangents mostly end
+higher, but some starts survive only the few heights, so the search tries both.
 """
 
 from dataclasses import replace
@@ -20,7 +20,7 @@ from inverse.profile.lens import Lens
 
 WALL = 10.0  # rad a pocket wall leans while a length moves by R (tuned on reference k = 1: +0.3 %)
 SLOPE = 10.0  # the same for the tangents of the other curves (tuned on k = 1.25: 3 ends 0.8 % lower, 30 diverges)
-COARSE = {"centre": 8, "flank": 12, "exit": 10, "disc": 6}  # spans while the shape is sought
+COARSE = {"centre": 8, "flank": 12, "exit": 10, "disc": 6}  # spans of the few heights
 
 
 def _held(lens: Lens):
@@ -55,7 +55,8 @@ def heights(lens: Lens, radius):
             blocks[name] = radius * np.eye(len(free))
             continue
         small = spans + bspline.DEGREE
-        pins = {"centre": (1, small - 1), "flank": (0, small - 1), "disc": (1,), "exit": () if lens.stepped else (1,)}[name]
+        level = () if name == "exit" and lens.stepped else (1,)
+        pins = {"centre": (1, small - 1), "flank": (0, small - 1)}.get(name, level)
         spread = np.eye(small)
         if 1 in pins:  # level on the axis: the first two control points move together
             spread[:, 0] += spread[:, 1]

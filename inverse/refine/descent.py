@@ -62,7 +62,13 @@ def _lower(lens: Lens, box, pocket):
     """Least value of every number; ``pocket`` is the least radius of the pocket (mm)."""
     low = jax.tree_util.tree_map(lambda a: jnp.full_like(a, -jnp.inf), lens)
     least = box.wall / np.cos(box.draft)
-    low = replace(low, corner=jnp.full(2, CORNER * pocket), foot=jnp.asarray(least), wall=jnp.full_like(lens.wall, np.tan(box.draft) * (1 + 1e-6)))
+    steepest = np.tan(box.draft) * (1 + 1e-6)
+    low = replace(
+        low,
+        corner=jnp.full(2, CORNER * pocket),
+        foot=jnp.asarray(least),
+        wall=jnp.full_like(lens.wall, steepest),
+    )
     if lens.stepped:
         low = replace(low, step=jnp.asarray(0.12 * box.radius))
     return ravel_pytree(low)[0]
@@ -103,21 +109,24 @@ class Descent:
         none = jnp.zeros(len(self.problem.limits))
         return State(x, self._optimiser.init(x), jax.random.PRNGKey(self.seed), none, origin, basis, 0)
 
-    def _run_chunk(self, x, moments, key, multipliers, origin, basis, step, total, rate, floor, soft0, soft1, stiffness):
-        problem = self.problem
+    def _run_chunk(
+        self, x, moments, key, multipliers, origin, basis, step, total, rate, floor, soft0, soft1, stiffness
+    ):
         bounded = jnp.isfinite(self._low)  # such a number is a coordinate by itself
         low = jnp.where(bounded, (self._low - origin) / jnp.where(bounded, jnp.diag(basis), 1.0), -jnp.inf)
 
         def loss(x, shift, softness):
             u = farfield.shifted(self._points, shift)
-            return merit_of.augmented(self._unravel(origin + basis @ x), problem, u, softness, multipliers, stiffness)
+            lens = self._unravel(origin + basis @ x)
+            return merit_of.augmented(lens, self.problem, u, softness, multipliers, stiffness)
 
         def body(carry, i):
             x, moments, key = carry
             done = (step + i) / total
             softness = soft0 * (soft1 / soft0) ** done
             key, draw = jax.random.split(key)
-            (value, figures), slope = jax.value_and_grad(loss, has_aux=True)(x, jax.random.uniform(draw, (3,)), softness)
+            shift = jax.random.uniform(draw, (3,))
+            (value, figures), slope = jax.value_and_grad(loss, has_aux=True)(x, shift, softness)
             with jax.numpy_dtype_promotion("standard"):
                 update, moments = self._optimiser.update(slope, moments, x)
             pace = rate * (floor + (1.0 - floor) * 0.5 * (1.0 + jnp.cos(jnp.pi * done)))

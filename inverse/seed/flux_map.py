@@ -44,7 +44,7 @@ class Recipe:
     @property
     def words(self):
         kind = "point seed" if self.edge == 0 else f"edge-ray seed {self.edge:+.2f}"
-        face = "" if self.drop == 0 else ", stepped"
+        face = "" if self.drop == 0 else f", disc {'above' if self.drop > 0 else 'below'} the ring"
         return f"{kind}, pocket ×{self.pocket:.2f}, foot ×{self.foot:.1f}{', crossing' if self.crossing else ''}{face}"
 
 

@@ -194,18 +194,20 @@ def test_the_descent_begins_at_its_lens(drop, kind):
     assert np.all(alone.corner == 1) and alone.foot == 1 and np.all(alone.wall == 1)
 
 
+# the axis is level: its two control points are one number, so number 2 is control point 3
+@pytest.mark.parametrize("number, points", [(0, [0, 1]), (2, [3])])
 @pytest.mark.parametrize("drop", [None, -0.6])
-def test_heights_move_the_curve_of_the_coarse_knots(drop):
+def test_heights_move_the_curve_of_the_coarse_knots(drop, number, points):
     """A step along a coarse height changes the centre lens by that coarse spline, the rest of the lens not."""
     lens = random_lens(8, drop)
     basis = coordinates.heights(lens, 1.0)
     numbers, unravel = ravel_pytree(lens)
     first = 2 + 1 + lens.wall.size  # corner, foot, wall come before the centre lens
-    moved = unravel(numbers + basis[:, first + 2])
+    moved = unravel(numbers + basis[:, first + number])
     r = np.linspace(0.0, float(lens.corner[0]), 101)
     change = np.asarray(shape(moved, BOX).centre.at(r)[0] - shape(lens, BOX).centre.at(r)[0])
     coarse = np.zeros(coordinates.COARSE["centre"] + 3)
-    coarse[3] = 1.0  # the axis counts once: number 2 is control point 3
+    coarse[points] = 1.0
     wanted = BSpline(bspline.knots(coordinates.COARSE["centre"]), coarse, 3)(np.clip(r / r[-1], 0.0, 1.0))
     np.testing.assert_allclose(change, wanted, atol=1e-9)
     assert same(replace(moved, centre=lens.centre), lens)
